@@ -58,14 +58,14 @@ class Position(NamedTuple):
     blocks : voltage it commutates at turn-off and holds while off [V]
     turn_on_voltage : voltage across it just before its run begins [V]; differs from `blocks` where the node floats
     driven : 1 where its gate is switched in this step, 0 where it is not [-]
-    count : how many such positions the stage has, all alike
+    copies : how many such positions the stage has, all alike
     """
 
     current: Waveform
     blocks: Values
     turn_on_voltage: Values
     driven: Values
-    count: int = 1
+    copies: int = 1
 
     def has_edges(self) -> NDArray[np.bool_]:
         """Return where the run has a beginning and an end: its width lies strictly between 0 and 1."""
@@ -86,12 +86,12 @@ class Winding(NamedTuple):
 
     current : [A]
     voltages : voltage across it during each segment of `current`, in the same order [V]; sets the flux
-    count : how many such windings the stage has, all alike
+    copies : how many such windings the stage has, all alike
     """
 
     current: Waveform
     voltages: tuple[Values, ...]
-    count: int = 1
+    copies: int = 1
 
 
 class Exchange(NamedTuple):
@@ -136,7 +136,7 @@ class Timing(NamedTuple):
 class Operation(NamedTuple):
     """The steady state of a stage at each step, as a topology states it.
 
-    positions, windings, exchanges : by slot name, of ONE of the `count` equal parts
+    positions, windings, exchanges : by slot name, of ONE of the `copies` equal parts
     timing : switching frequency and dead time
     duty_ratio : of the position the topology names in its documentation [-]
     conduction : code IDLE, CONTINUOUS, BOUNDARY or DISCONTINUOUS
@@ -158,13 +158,13 @@ class Slot(NamedTuple):
     name : such as "upper_switch"; the prefix of its columns
     kind : what sort of part fits
     table : name of the table under [stage] that holds its data; several slots may share one
-    count : how many equal parts the stage has there (before chips in parallel)
+    copies : how many equal parts the stage has there (before chips in parallel)
     """
 
     name: str
     kind: PartKind
     table: str
-    count: int = 1
+    copies: int = 1
 
 
 @runtime_checkable
@@ -284,13 +284,13 @@ class CooledPart(NamedTuple):
 
     name : slot name
     kind : sort of part
-    count : how many equal parts there are in all (chips in parallel included)
+    copies : how many equal parts there are in all (chips in parallel included)
     settings : the validated cooling keys of its table
     """
 
     name: str
     kind: PartKind
-    count: int
+    copies: int
     settings: Any
 
 

@@ -1,7 +1,7 @@
 """The description of a thermal network: what a cooling plugin states and `heat` solves.
 
 Heat of one part enters through its seat. A seat may carry a Foster chain (a curve fit from junction to base, whose
-inner nodes are no real places); the heat of all `count` equal parts arrives at the base at once, as a Foster fit
+inner nodes are no real places); the heat of all `copies` equal parts arrives at the base at once, as a Foster fit
 demands. Bases are masses, or boundaries whose temperature is given.
 """
 
@@ -39,13 +39,13 @@ class Seat(NamedTuple):
     part : name of the part, as in the stage's slots
     base : mass or boundary that the chain stands on
     cells : Foster cells (resistance [K/W], time constant [s]); empty: the part is as warm as its base
-    count : how many equal parts stand on the base; the base receives `count` times the loss of one
+    copies : how many equal parts stand on the base; the base receives `copies` times the loss of one
     """
 
     part: str
     base: str
     cells: tuple[tuple[float, float], ...] = ()
-    count: int = 1
+    copies: int = 1
 
 
 class Network(NamedTuple):

@@ -102,7 +102,7 @@ def parse(given: object, dimension: str) -> float:
     size = 1.0 if unit == "" else _unit_size(unit, known)
     if size is None:
         nature = _nature(unit)
-        raise ValueError(f"found {given!r}, whose unit is {nature}; give a {dimension} such as {known.example!r}")
+        raise ValueError(f"found {given!r}, where the unit is {nature}; give a {dimension} such as {known.example!r}")
     return _finite(_scale(number, size), given, dimension)
 
 
@@ -125,7 +125,7 @@ def _scale(number: float, size: float) -> float:
 
 def _nature(unit: str) -> str:
     names = [name for name, dimension in DIMENSIONS.items() if _unit_size(unit, dimension) is not None]
-    return f"one of {names[0]}" if names else "not known"
+    return f"a unit of {names[0]}" if names else "not known"
 
 
 def _finite(value: float, given: object, dimension: str) -> float:
