@@ -1,0 +1,116 @@
+"""Accounts of one mission: energy, losses, battery and temperatures, from its settled blocks and its table of steps."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from tideleg.battery import Battery
+from tideleg.march import Demand, Settled
+from tideleg.outcome import BatteryEntry, EnergyAccount, LossEntry, ThermalEntry
+from tideleg.stage import Stage
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    import pandas as pd
+
+    from tideleg.waveform import FloatArray
+
+
+def energy_account(demand: Demand, blocks: list[Settled], steps: pd.DataFrame) -> EnergyAccount:
+    """Return where the energy of one pass went, with both residuals of the books."""
+    seconds = demand.duration
+
+    def energy(watts: FloatArray) -> float:
+        return float(np.sum(watts * seconds))
+
+    link = steps["power_w"].to_numpy()
+    battery = steps["battery_power_w"].to_numpy()
+    loss = steps["loss_w"].to_numpy()
+    checked = np.concatenate([block.checked.total[0] for block in blocks])
+    throughput = energy(np.abs(battery))
+    scale = throughput if throughput > 0.0 else 1.0
+    return EnergyAccount(
+        link_out_j=energy(np.maximum(link, 0.0)),
+        link_in_j=energy(np.maximum(-link, 0.0)),
+        battery_out_j=energy(np.maximum(battery, 0.0)),
+        battery_in_j=energy(np.maximum(-battery, 0.0)),
+        loss_j=energy(loss),
+        battery_heat_j=energy(steps["battery_heat_w"].to_numpy()),
+        curtailed_j=energy(np.abs(steps["curtailed_w"].to_numpy())),
+        requested_j=energy(np.abs(demand.power)),
+        throughput_j=throughput,
+        residual=energy(np.abs(battery - link - loss)) / scale,
+        recomputed_residual=energy(np.abs(battery - link - checked)) / scale,
+    )
+
+
+def loss_entries(stage: Stage, demand: Demand, blocks: list[Settled]) -> tuple[LossEntry, ...]:
+    """Return the energy of every loss term by direction, greatest first."""
+    direction = np.concatenate([block.direction[0] for block in blocks])
+    entries = []
+    for part in stage.parts:
+        for bound in part.terms:
+            key = (part.slot.name, bound.term.mechanism)
+            joules = np.concatenate([block.losses.by_term[key][0] for block in blocks]) * demand.duration
+            by_direction = [float(joules[direction == sign].sum()) for sign in (1.0, -1.0, 0.0)]
+            entries.append(LossEntry(*key, *by_direction))
+    return tuple(sorted(entries, key=lambda entry: -entry.total_j))
+
+
+def battery_entry(battery: Battery, demand: Demand, steps: pd.DataFrame) -> BatteryEntry:
+    """Return what one pass does to the battery; half of the ampere-hours both ways over the capacity is its cycles."""
+    current = steps["battery_current_a"].to_numpy()
+    voltage = steps["battery_voltage_v"].to_numpy()
+    coulombs = float(np.sum(np.abs(current) * demand.duration))
+    soc = steps["soc"].to_numpy() if battery.tracks_charge else None
+    return BatteryEntry(
+        start_soc=None if soc is None else battery.start_soc,
+        end_soc=None if soc is None else float(soc[-1]),
+        least_soc=None if soc is None else float(min(soc.min(), battery.start_soc)),
+        greatest_soc=None if soc is None else float(max(soc.max(), battery.start_soc)),
+        throughput_ah=coulombs / 3600.0,
+        equivalent_full_cycles=None if soc is None else coulombs / (2.0 * battery.capacity),
+        least_voltage_v=float(voltage.min()),
+        greatest_voltage_v=float(voltage.max()),
+        greatest_discharge_a=float(max(current.max(), 0.0)),
+        greatest_charge_a=float(max(-current.min(), 0.0)),
+    )
+
+
+def thermal_entries(
+    stage: Stage, demands: Mapping[str, Demand], gains: Mapping[str, FloatArray], steps: Mapping[str, pd.DataFrame]
+) -> tuple[ThermalEntry, ...]:
+    """Return the temperatures of every part over all missions, hottest first.
+
+    gains : (seated part,) greatest loop gain at rest, by mission
+    """
+    entries = []
+    for part in stage.parts:
+        name = part.slot.name
+        if name in stage.seated:
+            entries.append(_seated_entry(name, stage.seated.index(name), demands, gains, steps))
+    return tuple(sorted(entries, key=lambda entry: -entry.greatest_degc))
+
+
+def _seated_entry(
+    name: str,
+    index: int,
+    demands: Mapping[str, Demand],
+    gains: Mapping[str, FloatArray],
+    steps: Mapping[str, pd.DataFrame],
+) -> ThermalEntry:
+    greatest, least, time, where, weighted, seconds = -np.inf, np.inf, 0.0, "", 0.0, 0.0
+    for mission, frame in steps.items():
+        end = frame[f"{name}.temperature_degc"].to_numpy()
+        row = int(np.argmax(end))
+        if end[row] > greatest:
+            greatest, time, where = float(end[row]), float(frame["time_s"].iloc[row]), mission
+        least = min(least, float(end.min()))
+        duration = demands[mission].duration
+        weighted += float(np.sum(frame[f"{name}.temperature_mean_degc"].to_numpy() * duration))
+        seconds += float(duration.sum())
+    gain = max(float(g[index]) for g in gains.values())
+    return ThermalEntry(name, greatest, weighted / seconds, greatest - least, time, where, gain)

@@ -1,0 +1,148 @@
+"""The table of steps: from settled blocks to named columns with units.
+
+Parts that repeat (legs, chips in parallel) are given for ONE; their number stands in the summary.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from tideleg.battery import CAUSE_WORDS, Battery
+from tideleg.contract import CONDUCTION
+from tideleg.march import Demand, Settled
+from tideleg.stage import Stage, StagePart
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from tideleg.waveform import FloatArray
+
+Columns = dict[str, "FloatArray"]
+
+DIRECTIONS = ("charge", "idle", "discharge")
+
+
+def steps_frame(
+    stage: Stage, battery: Battery, demand: Demand, blocks: list[Settled], candidate: int = 0
+) -> pd.DataFrame:
+    """Return one row a step for one candidate; no `soc` column where the state of charge is not modelled.
+
+    Raises
+    ------
+    ValueError
+        If a number is not finite: every column of the table must be.
+    """
+    import pandas as pd
+
+    pieces = [_block_columns(stage, block, candidate) for block in blocks]
+    columns: dict[str, Any] = {
+        "time_s": np.concatenate([[0.0], np.cumsum(demand.duration)[:-1]]),
+        "duration_s": demand.duration,
+        "power_requested_w": demand.power,
+    }
+    for name in pieces[0]:
+        if name == "soc" and not battery.tracks_charge:
+            continue
+        columns[name] = np.concatenate([piece[name] for piece in pieces])
+        if not np.all(np.isfinite(columns[name])):
+            raise ValueError(f"column {name} is not finite in step {int(np.argmin(np.isfinite(columns[name])))}")
+    columns["curtailed_cause"] = pd.Categorical.from_codes(columns["curtailed_cause"].astype(int), list(CAUSE_WORDS))
+    columns["direction"] = pd.Categorical.from_codes(columns["direction"].astype(int), list(DIRECTIONS))
+    columns["conduction"] = pd.Categorical.from_codes(columns["conduction"].astype(int), list(CONDUCTION))
+    return pd.DataFrame(columns, copy=False)
+
+
+def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
+    """Return every column of one block after the demand's own, in order."""
+    operation, battery = block.checked.operation, block.battery
+    shape = block.losses.total.shape
+
+    def one(values: Any) -> FloatArray:
+        return np.asarray(np.broadcast_to(np.asarray(values, dtype=np.float64), shape)[candidate])
+
+    link_current = block.power / block.point.link_voltage
+    columns: Columns = {
+        "power_w": one(block.power),
+        "curtailed_w": one(block.curtailed),
+        "curtailed_cause": one(battery.cause),
+        "direction": one(1.0 + block.direction),
+        "conduction": one(operation.conduction),
+        "soc": one(battery.soc_end),
+        "battery_voltage_v": one(battery.voltage),
+        "battery_current_a": one(battery.current),
+        "battery_power_w": one(battery.power),
+        "battery_heat_w": one(battery.resistance * battery.current * battery.current),
+        "link_voltage_v": one(block.point.link_voltage),
+        "link_current_a": one(link_current),
+        "duty_ratio": one(operation.duty_ratio),
+        "switching_frequency_hz": one(operation.timing.frequency),
+        "loss_w": one(block.losses.total),
+    }
+    for part in stage.parts:
+        if part.slot.kind in _READERS:
+            columns |= _READERS[part.slot.kind](part, block, one)
+        columns |= _loss_and_temperature(stage, part, block, candidate, one)
+    return columns
+
+
+def _switch(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
+    name = part.slot.name
+    position = block.checked.operation.positions[name]
+    share = 1.0 / part.in_parallel
+    current = position.current
+    return {
+        f"{name}.current_rms_a": one(current.rms() * share),
+        f"{name}.current_mean_a": one(current.mean() * share),
+        f"{name}.current_peak_a": one(np.maximum(np.abs(current.peak()), np.abs(current.valley())) * share),
+        f"{name}.turn_on_current_a": one(position.turn_on_current() * share),
+        f"{name}.turn_off_current_a": one(position.turn_off_current() * share),
+        f"{name}.blocked_voltage_v": one(position.blocks),
+    }
+
+
+def _inductor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
+    name = part.slot.name
+    current = block.checked.operation.windings[name].current
+    return {
+        f"{name}.current_mean_a": one(current.mean()),
+        f"{name}.current_rms_a": one(current.rms()),
+        f"{name}.current_ripple_a": one(current.peak_to_peak()),
+        f"{name}.current_peak_a": one(current.peak()),
+        f"{name}.current_valley_a": one(current.valley()),
+    }
+
+
+def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
+    name = part.slot.name
+    exchange = block.checked.operation.exchanges[name]
+    columns = {f"{name}.current_rms_a": one(exchange.current.ac_rms())}
+    if part.base is not None and part.base.capacitance is not None:
+        swing = exchange.current.charge_swing() / exchange.frequency
+        columns[f"{name}.voltage_ripple_v"] = one(swing / part.base.capacitance)
+    return columns
+
+
+_READERS: dict[str, Callable[[StagePart, Settled, Callable[[Any], FloatArray]], Columns]] = {
+    "switch": _switch,
+    "inductor": _inductor,
+    "capacitor": _capacitor,
+}
+
+
+def _loss_and_temperature(
+    stage: Stage, part: StagePart, block: Settled, candidate: int, one: Callable[[Any], FloatArray]
+) -> Columns:
+    """Return the loss of ONE part and, where modelled, its temperatures."""
+    name = part.slot.name
+    columns: Columns = {}
+    if part.terms:
+        loss = sum(block.losses.by_term[name, bound.term.mechanism] for bound in part.terms)
+        columns[f"{name}.loss_w"] = one(loss / part.total)
+    if name in stage.seated:
+        index = stage.seated.index(name)
+        columns[f"{name}.temperature_degc"] = block.end[index, candidate]
+        columns[f"{name}.temperature_mean_degc"] = block.mean[index, candidate]
+    return columns

@@ -1,0 +1,47 @@
+"""Tell what is in a profile: rows, steps, energies, peaks, greatest rms by window. Nothing is changed or filled."""
+
+from __future__ import annotations
+
+import argparse
+from pathlib import Path
+
+HELP = "tell what is in a profile"
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare what the command takes."""
+    parser.add_argument("file", type=Path, metavar="FILE", help="profile (CSV with time_s and a power column)")
+    parser.add_argument("--plan", type=Path, metavar="PLAN", help="plan whose vehicle turns a speed profile into power")
+    parser.add_argument("--terminals", choices=("link", "battery"), default="link", help="where the power is meant")
+    parser.add_argument("--interpolation", choices=("hold", "linear"), default="hold", help="between two rows")
+    parser.add_argument(
+        "--positive", choices=("discharge", "charge"), default="discharge", help="sign rule of the file"
+    )
+    parser.add_argument("--json", action="store_true", help="print JSON for machines")
+
+
+def execute(given: argparse.Namespace) -> int:
+    """Read, tell; return the exit status."""
+    import json
+
+    from rich.console import Console
+
+    from tideleg.command.passport_page import print_passport
+    from tideleg.demand import vehicle_of
+    from tideleg.mission import passport, read_profile
+    from tideleg.plan import load_plan
+
+    vehicle = vehicle_of(load_plan(given.plan)) if given.plan is not None else None
+    profile = read_profile(
+        given.file,
+        terminals=given.terminals,
+        interpolation=given.interpolation,
+        positive=given.positive,
+        vehicle=vehicle,
+    )
+    found = passport(profile)
+    if given.json:
+        print(json.dumps(found.to_dict() | {"rules": list(profile.rules), "sha256": profile.sha256}, indent=2))
+    else:
+        print_passport(profile, found, Console())
+    return 0

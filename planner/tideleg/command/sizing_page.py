@@ -1,0 +1,23 @@
+"""The sizing on the terminal: every value, what set it, at which instant."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from rich.table import Table
+
+if TYPE_CHECKING:
+    from rich.console import Console
+
+    from tideleg.decide.size import Sized
+
+
+def print_sizing(sized: Sized, console: Console) -> None:
+    """Print the decisions and the notes of a sizing."""
+    table = Table("value", "was", "now", "set by", "at", title="What was sized, and by what", title_justify="left")
+    for decision in sized.decisions:
+        table.add_row(decision.key, decision.before or "not given", str(decision.value), decision.set_by, decision.at)
+    console.print()
+    console.print(table)
+    for note in sized.notes:
+        console.print(f"  {note}", soft_wrap=True)

@@ -1,0 +1,69 @@
+"""Changing one thing of a plan: every function returns a new plan and leaves the old one as it was."""
+
+from __future__ import annotations
+
+from tideleg.plan import Curve, Plan
+from tideleg.quantity import parse
+
+
+def with_stage(plan: Plan, **settings: object) -> Plan:
+    """Return the plan with keys of [stage] changed or added."""
+    stage = plan.stage.model_copy(update={"settings": {**plan.stage.settings, **settings}})
+    return plan.model_copy(update={"stage": stage})
+
+
+def with_topology(plan: Plan, name: str) -> Plan:
+    """Return the plan with another topology."""
+    return plan.model_copy(update={"stage": plan.stage.model_copy(update={"topology": name})})
+
+
+def without_stage_key(plan: Plan, key: str) -> Plan:
+    """Return the plan without one key of [stage]."""
+    settings = {name: value for name, value in plan.stage.settings.items() if name != key}
+    return plan.model_copy(update={"stage": plan.stage.model_copy(update={"settings": settings})})
+
+
+def with_part(plan: Plan, table: str, **keys: object) -> Plan:
+    """Return the plan with keys of one part table changed or added."""
+    parts = {**plan.stage.parts, table: {**plan.stage.parts.get(table, {}), **keys}}
+    return plan.model_copy(update={"stage": plan.stage.model_copy(update={"parts": parts})})
+
+
+def with_cooling(plan: Plan, **keys: object) -> Plan:
+    """Return the plan with keys of [cooling] changed or added."""
+    if plan.cooling is None:
+        raise ValueError("the plan has no [cooling] to change")
+    cooling = plan.cooling.model_copy(update={"settings": {**plan.cooling.settings, **keys}})
+    return plan.model_copy(update={"cooling": cooling})
+
+
+def with_warmer_coolant(plan: Plan, kelvin: float) -> Plan:
+    """Return the plan with every constant coolant temperature raised [K]."""
+    missions = tuple(
+        m if m.coolant is None else m.model_copy(update={"coolant": m.coolant + kelvin}) for m in plan.mission
+    )
+    return plan.model_copy(update={"mission": missions})
+
+
+def with_battery_resistance(plan: Plan, factor: float) -> Plan:
+    """Return the plan with the battery's resistance, both directions, multiplied by `factor` [-]."""
+    update: dict[str, object] = {"resistance": _scaled(plan.battery.resistance, factor)}
+    if plan.battery.resistance_charge is not None:
+        update["resistance_charge"] = _scaled(plan.battery.resistance_charge, factor)
+    return plan.model_copy(update={"battery": plan.battery.model_copy(update=update)})
+
+
+def _scaled(curve: Curve, factor: float) -> Curve:
+    return Curve(soc=curve.soc, value=tuple(factor * value for value in curve.value))
+
+
+def stage_number(plan: Plan, key: str, dimension: str) -> float | None:
+    """Return a quantity directly under [stage] in its base unit, or None where it is not given."""
+    given = plan.stage.settings.get(key)
+    return None if given is None else parse(given, dimension)
+
+
+def part_number(plan: Plan, table: str, key: str, dimension: str) -> float | None:
+    """Return a quantity of a part table in its base unit, or None where it is not given."""
+    given = plan.stage.parts.get(table, {}).get(key)
+    return None if given is None else parse(given, dimension)

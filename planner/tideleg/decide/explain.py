@@ -1,0 +1,67 @@
+"""What would change the answer: the same missions run again with one thing of the plan changed at a time."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Iterator
+
+from tideleg.decide.changes import (
+    part_number,
+    stage_number,
+    with_battery_resistance,
+    with_part,
+    with_stage,
+    with_warmer_coolant,
+)
+from tideleg.errors import InputError, NoEquilibriumError
+from tideleg.outcome import Change, Outcome
+from tideleg.plan import Plan
+from tideleg.registry import Registry
+from tideleg.run import Progress, run
+
+WARMER_K = 10.0
+AGED_RESISTANCE = 1.7
+"""Growth of the battery's resistance at its end of life [-]; common practice, no source."""
+
+
+def explained(
+    plan: Plan, outcome: Outcome, *, registry: Registry | None = None, progress: Progress | None = None
+) -> Outcome:
+    """Return the outcome with its `changes` filled: one re-run for each change that the plan allows."""
+    changes = []
+    for words, variant in _variants(plan):
+        try:
+            other = run(variant, registry=registry, progress=progress)
+        except NoEquilibriumError:
+            changes.append(Change(words, False, "no thermal equilibrium", None, None, None))
+            continue
+        except InputError as error:
+            changes.append(Change(words, False, f"cannot operate: {error}", None, None, None))
+            continue
+        changes.append(_change(words, other))
+    return dataclasses.replace(outcome, changes=tuple(changes))
+
+
+def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
+    """Yield (words, changed plan) for every change worth asking about."""
+    if any(mission.coolant is not None for mission in plan.mission):
+        yield f"coolant {WARMER_K:g} K warmer", with_warmer_coolant(plan, WARMER_K)
+    frequency = stage_number(plan, "switching_frequency", "frequency")
+    if frequency is not None:
+        yield "switching frequency 25 % higher", with_stage(plan, switching_frequency=1.25 * frequency)
+        yield "switching frequency 25 % lower", with_stage(plan, switching_frequency=0.75 * frequency)
+    inductance = part_number(plan, "inductor", "inductance", "inductance")
+    if inductance is not None:
+        yield "inductance 30 % lower (saturation, tolerance)", with_part(plan, "inductor", inductance=0.7 * inductance)
+    chips = plan.stage.parts.get("switch", {}).get("in_parallel", 1)
+    if "switch" in plan.stage.parts and isinstance(chips, int):
+        yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)
+    if any(value > 0.0 for value in plan.battery.resistance.value):
+        yield f"battery aged: resistance times {AGED_RESISTANCE:g}", with_battery_resistance(plan, AGED_RESISTANCE)
+
+
+def _change(words: str, other: Outcome) -> Change:
+    junctions = [t.greatest_degc for t in other.thermal if t.part.endswith("switch")]
+    binding = "" if other.binding is None else f"{other.binding.name} of {other.binding.part.replace('_', ' ')}"
+    used = None if other.binding is None else other.binding.used
+    return Change(words, other.holds, binding, used, max(junctions, default=None), other.efficiency)

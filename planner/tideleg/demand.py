@@ -1,0 +1,130 @@
+"""From a plan to what the march needs: the battery, the profiles, and the demand of each mission."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+
+from tideleg.battery import Battery
+from tideleg.errors import PlanError
+from tideleg.march import Demand
+from tideleg.mission import Profile, Vehicle, read_profile
+from tideleg.plan import Curve, MissionTable, Plan
+from tideleg.stage import Stage
+from tideleg.waveform import FloatArray
+
+REFERENCE_DEGC = 25.0
+"""Temperature of parts without a thermal path where the plan gives no coolant either [degC]."""
+
+
+def battery_of(plan: Plan) -> Battery:
+    """Return the battery that a plan describes, its curves on one common grid."""
+    table = plan.battery
+    charge = table.resistance if table.resistance_charge is None else table.resistance_charge
+    curves = (table.open_circuit_voltage, table.resistance, charge)
+    grid = np.unique(np.concatenate([np.asarray(curve.soc, dtype=float) for curve in curves]))
+    voltage, out, into = (_on_grid(grid, curve) for curve in curves)
+    low, high = table.soc_window
+    return Battery(
+        grid,
+        voltage,
+        out,
+        into,
+        capacity=np.inf if table.capacity is None else table.capacity,
+        start_soc=low if table.start_soc is None else table.start_soc,
+        lowest_soc=low,
+        highest_soc=high,
+        discharge_current_limit=_or_infinite(table.current_limit_discharge),
+        charge_current_limit=_or_infinite(table.current_limit_charge),
+        lowest_voltage=0.0 if table.voltage_min is None else table.voltage_min,
+        highest_voltage=_or_infinite(table.voltage_max),
+    )
+
+
+def _on_grid(grid: FloatArray, curve: Curve) -> FloatArray:
+    return np.interp(grid, np.asarray(curve.soc, dtype=float), np.asarray(curve.value, dtype=float))
+
+
+def _or_infinite(limit: float | None) -> float:
+    return np.inf if limit is None else limit
+
+
+def profile_of(plan: Plan, mission: MissionTable) -> Profile:
+    """Read the profile of one mission as the plan declares it.
+
+    Raises
+    ------
+    ProfileError
+        If the file cannot be used; file, line and column are named.
+    """
+    return read_profile(
+        plan.folder / mission.profile,
+        name=mission.name or Path(mission.profile).stem,
+        terminals=mission.terminals,
+        interpolation=mission.interpolation,
+        positive=mission.sign,
+        vehicle=vehicle_of(plan),
+    )
+
+
+def vehicle_of(plan: Plan) -> Vehicle | None:
+    """Return the vehicle of a plan, which turns a speed profile into power; None where the plan has none."""
+    v = plan.vehicle
+    if v is None:
+        return None
+    return Vehicle(
+        mass_kg=v.mass,
+        rotating_mass_factor=v.rotating_mass_factor,
+        drag_area_m2=v.drag_area,
+        rolling_coefficient=v.rolling_resistance,
+        air_density_kg_m3=v.air_density,
+        f0_n=v.f0,
+        f1_n_per_m_s=v.f1,
+        f2_n_per_m_s2=v.f2,
+        drivetrain_efficiency=v.drivetrain_efficiency,
+        regeneration_limit_w=v.regeneration_limit,
+        regeneration_share=v.regeneration_share,
+        auxiliary_power_w=v.auxiliary_power,
+    )
+
+
+def demand_of(plan: Plan, index: int, profile: Profile, stage: Stage) -> Demand:
+    """Return what one mission asks of the stage, step by step.
+
+    Raises
+    ------
+    PlanError
+        If the cooling needs a boundary temperature that neither the plan nor the profile gives.
+    """
+    mission = plan.mission[index]
+    steps = len(profile.power_w)
+    given = {
+        "coolant": _column(profile.coolant_degc, mission.coolant, steps),
+        "ambient": _column(profile.ambient_degc, mission.ambient, steps),
+    }
+    names = () if stage.modes is None else stage.modes.boundaries
+    for name in names:
+        if given.get(name) is None:
+            raise PlanError(
+                f"the cooling needs the {name} temperature; give it here, such as {name} = '25 degC',"
+                f" or as the column {name}_degc of the profile",
+                file=plan.file,
+                key=f"mission.{index}.{name}",
+            )
+    held = given["coolant"] if given["coolant"] is not None else np.full(steps, REFERENCE_DEGC)
+    boundary = np.stack([given[name] for name in names]) if names else np.zeros((0, steps))
+    link = _column(profile.link_voltage_v, plan.link.voltage, steps)
+    greatest = _column(profile.power_max_w, np.inf, steps)
+    least = _column(profile.power_min_w, -np.inf, steps)
+    assert link is not None
+    assert greatest is not None
+    assert least is not None
+    return Demand(profile.power_w, profile.terminals, profile.duration_s, link, boundary, held, greatest, least)
+
+
+def _column(column: FloatArray | None, constant: float | None, steps: int) -> FloatArray | None:
+    """Return the profile's column, or the plan's constant at every step, or None."""
+    if column is not None:
+        return column
+    return None if constant is None else np.full(steps, float(constant))

@@ -1,0 +1,79 @@
+"""What stands on the page about the stage and the inputs: as the person wrote it, not as numbers read back."""
+
+from __future__ import annotations
+
+import hashlib
+import platform
+from collections.abc import Iterable, Mapping
+from importlib import metadata
+from pathlib import Path
+
+from tideleg.mission import Profile
+from tideleg.outcome import Inputs, PartEntry
+from tideleg.plan import Plan
+from tideleg.stage import Stage
+
+LIBRARIES = ("numpy", "pandas", "pydantic", "pluggy")
+"""Packages whose version can change a number."""
+
+
+def stage_facts(plan: Plan, stage: Stage) -> Mapping[str, str]:
+    """Return the stage at a glance, label -> value."""
+    facts = {"topology": stage.topology.name}
+    facts |= {_words(key): _text(value) for key, value in plan.stage.settings.items()}
+    facts["link voltage"] = _volts(plan.link.voltage)
+    if plan.link.trip_voltage is not None:
+        facts["link trip voltage"] = _volts(plan.link.trip_voltage)
+    if plan.link.capacitance is not None:
+        facts["link capacitance, whole bus (energy, discharge)"] = f"{plan.link.capacitance * 1e6:.4g} uF"
+    own = plan.stage.parts.get("link_capacitor", {}).get("capacitance")
+    if own is not None:
+        facts["link capacitance, the stage's own (ripple)"] = _text(own)
+    if plan.cooling is not None:
+        facts["cooling"] = plan.cooling.model
+    return facts
+
+
+def part_entries(plan: Plan, stage: Stage) -> tuple[PartEntry, ...]:
+    """Return every sort of part with the data that the plan gives for it."""
+    entries = []
+    for part in stage.parts:
+        given = plan.stage.parts.get(part.slot.table, {})
+        facts = {_words(key): _text(value) for key, value in given.items() if key != "part"}
+        if given or part.terms:
+            in_parallel = int(part.in_parallel) if not hasattr(part.in_parallel, "shape") else 0
+            entries.append(PartEntry(part.slot.name, part.slot.kind, part.slot.copies, in_parallel, facts))
+    return tuple(entries)
+
+
+def inputs_of(plan: Plan, profiles: Iterable[Profile]) -> Inputs:
+    """Return the fingerprints of what went in: every file by SHA-256, every library by version."""
+    sha256 = {}
+    if plan.file is not None:
+        sha256[plan.file.name] = file_sha256(plan.file)
+    for profile in profiles:
+        sha256[profile.file.name if profile.file else profile.name] = profile.sha256
+    for extra in plan.extra_files:
+        sha256[extra.name] = file_sha256(extra)
+    versions = {"tideleg": metadata.version("tideleg"), "python": platform.python_version()}
+    versions |= {name: metadata.version(name) for name in LIBRARIES}
+    return Inputs(sha256, versions)
+
+
+def file_sha256(file: Path) -> str:
+    """Return the SHA-256 of a file's bytes, in hexadecimal."""
+    return hashlib.sha256(file.read_bytes()).hexdigest()
+
+
+def _words(key: str) -> str:
+    return key.replace("_", " ")
+
+
+def _volts(value: float) -> str:
+    return f"{value:.4g} V"
+
+
+def _text(value: object) -> str:
+    if isinstance(value, list):
+        return "; ".join(_text(item) for item in value)
+    return f"{value:.6g}" if isinstance(value, float) else str(value)

@@ -1,0 +1,63 @@
+"""The words of page one: the verdict in one sentence, and what a reader must be warned of."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+
+import numpy as np
+
+from tideleg.battery import Battery
+from tideleg.limits import LimitCheck
+from tideleg.march import Demand
+from tideleg.outcome import ThermalEntry
+from tideleg.stage import Stage
+
+
+def verdict_sentence(checks: tuple[LimitCheck, ...], unchecked: tuple[str, ...]) -> str:
+    """Return whether the stage does the mission, what binds, where and with what margin."""
+    broken = [check for check in checks if not check.holds]
+    if broken:
+        first = broken[0]
+        more = f" and {len(broken) - 1} more" if len(broken) > 1 else ""
+        return f"does not hold: {describe(first)}{more} of {len(checks)} limits"
+    if unchecked:
+        return f"not proven: {len(unchecked)} of the stated limits could not be checked for lack of data"
+    return f"holds all {len(checks)} limits; the tightest is {describe(checks[0])}"
+
+
+def describe(check: LimitCheck) -> str:
+    """Return one limit in words: what, where, found against allowed, margin, instant."""
+    where = "" if check.part in ("mission", "stage") else f" of {check.part.replace('_', ' ')}"
+    when = "" if check.time_s is None else f" at {check.time_s:.6g} s of {check.mission}"
+    found, allowed, margin = (quantity_text(v, check.unit) for v in (check.value, check.limit, abs(check.margin)))
+    distance = f"{margin} left" if check.holds else f"{margin} too far"
+    return f"{check.name}{where}: {found} against {allowed} ({distance}){when}"
+
+
+def quantity_text(value: float, unit: str) -> str:
+    """Return a value with its unit as page one prints it; shares as percent."""
+    return f"{100.0 * value:.3g} %" if unit == "share" else f"{value:.4g} {unit}"
+
+
+def warnings_of(
+    stage: Stage, battery: Battery, demands: Iterable[tuple[str, Demand]], thermal: tuple[ThermalEntry, ...]
+) -> tuple[str, ...]:
+    """Return what a reader must know before trusting the numbers."""
+    found = [
+        f"{entry.part.replace('_', ' ')}: the loop gain at rest reaches {entry.loop_gain:.2f}; held at that operating"
+        " point the part would find no steady temperature"
+        for entry in thermal
+        if entry.loop_gain >= 1.0
+    ]
+    if not battery.tracks_charge:
+        found.append("the battery has no capacity given: it is an ideal source and its state of charge is not modelled")
+    if stage.modes is not None:
+        shortest = float(np.min(stage.modes.time_constants, initial=np.inf))
+        for name, demand in demands:
+            longest = float(demand.duration.max())
+            if longest > shortest:
+                found.append(
+                    f"{name}: steps of up to {longest:g} s are longer than the shortest thermal time constant"
+                    f" ({shortest:.2g} s); temperature peaks inside a step are not seen"
+                )
+    return tuple(found)
