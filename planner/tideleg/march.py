@@ -17,7 +17,18 @@ from typing import Literal, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from tideleg.battery import Battery, BatteryAnswer, Cause, answer
+from tideleg.battery import (
+    Battery,
+    BatteryAnswer,
+    BatteryPath,
+    BatteryState,
+    Cause,
+    answer,
+    at_rest,
+    path_of,
+    resting_path,
+    state_after,
+)
 from tideleg.contract import Point
 from tideleg.errors import NoEquilibriumError
 from tideleg.heat import Propagator
@@ -31,7 +42,7 @@ MOST_PASSES = 60
 TEMPERATURE_TOLERANCE = 1e-5
 """The relaxation ends when no mean temperature moves by more than this in a pass [K]."""
 
-ENERGY_TOLERANCE = 1e-11
+ENERGY_TOLERANCE = 1e-10
 """... and when the loss energy moves by no more than this share of the battery's throughput in a pass [-]."""
 
 CEILING = 1000.0
@@ -83,12 +94,12 @@ class Demand:
 class Carry(NamedTuple):
     """What one block hands to the next.
 
-    soc : (C, 1) state of charge [-]
+    battery : the battery between two steps
     heat : modal thermal state
     temperature : (seated part, C, 1) last mean temperatures, the first guess of the next block [degC]
     """
 
-    soc: FloatArray
+    battery: BatteryState
     heat: FloatArray
     temperature: FloatArray
 
@@ -154,15 +165,15 @@ def march(
 
 def start(stage: Stage, battery: Battery, demand: Demand, temperature: float | None, candidates: int = 1) -> Carry:
     """Return the state before the first step: at rest with the first boundaries, or all at one temperature [degC]."""
-    soc = np.full((candidates, 1), battery.start_soc)
+    rested = at_rest(battery, candidates)
     if stage.modes is None:
-        return Carry(soc, np.zeros((0, candidates)), np.zeros((0, candidates, 1)))
+        return Carry(rested, np.zeros((0, candidates)), np.zeros((0, candidates, 1)))
     first = demand.boundary[:, 0] if temperature is None else np.full(len(demand.boundary), temperature)
     heat = stage.modes.soaked(first)
     heat = np.broadcast_to(heat.reshape(heat.shape[0], -1), (heat.shape[0], candidates)).copy()
     rest = stage.modes.steady(np.zeros((len(stage.seated), 1)), first[:, None])
     guess = np.broadcast_to(rest.reshape(len(stage.seated), -1, 1), (len(stage.seated), candidates, 1)).copy()
-    return Carry(soc, heat, guess)
+    return Carry(rested, heat, guess)
 
 
 def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed: float) -> Settled:
@@ -174,15 +185,15 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
     the response of the step's mean temperature to its own loss. Heat left by earlier steps needs no damping: it only
     flows forward in time, and each pass carries it exactly.
     """
-    shape = (len(carry.soc), len(demand.power))
+    shape = (len(carry.battery.soc), len(demand.power))
     propagator = None if stage.modes is None else Propagator(stage.modes, demand.duration)
     temperature = np.broadcast_to(carry.temperature, (len(stage.seated), *shape)).copy()
     loss = np.zeros(shape)
-    soc_path = np.broadcast_to(carry.soc, shape)
+    path = resting_path(carry.battery, shape[-1])
     path_resistance = np.zeros(shape)
     active = np.broadcast_to(~((demand.power == 0.0) & stage.idles_off), shape)
     for passes in range(1, MOST_PASSES + 1):
-        given = answer(battery, _wanted(demand, loss), demand.duration, carry.soc, soc_path)
+        given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path)
         point = Point(
             given.voltage, np.broadcast_to(demand.link_voltage, shape), given.current, path_resistance, active
         )
@@ -190,14 +201,21 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
-        soc_moved = np.max(np.abs(0.5 * (given.soc_start + given.soc_end) - soc_path))
+        still = _battery_still(path, path_of(given))
         temperature = temperature + moved
-        loss, path_resistance, soc_path = losses.total, losses.path_resistance, 0.5 * (given.soc_start + given.soc_end)
+        loss, path_resistance, path = losses.total, losses.path_resistance, path_of(given)
         _refuse_runaway(stage, temperature, losses, demand, elapsed)
-        still = not moved.size or float(np.max(np.abs(moved))) < TEMPERATURE_TOLERANCE
-        if still and soc_moved < 1e-12 and np.all(drift <= ENERGY_TOLERANCE * throughput + 1e-15):
-            return _finish(stage, battery, demand, carry, losses, temperature, response, soc_path, active, passes)
+        still = still and float(np.max(np.abs(moved), initial=0.0)) < TEMPERATURE_TOLERANCE
+        if still and np.all(drift <= ENERGY_TOLERANCE * throughput + 1e-15):
+            return _finish(stage, battery, demand, carry, losses, temperature, response, path, active, passes)
     raise _unsettled(stage, moved, losses, demand, elapsed)
+
+
+def _battery_still(before: BatteryPath, after: BatteryPath) -> bool:
+    """Whether neither charge nor RC pairs moved in a pass; what is left is far below the energy tolerance."""
+    charge = np.max(np.abs(after.soc_middle - before.soc_middle))
+    pairs = np.max(np.abs(after.pair_start - before.pair_start), initial=0.0)
+    return bool(charge < 1e-9 and pairs < 1e-6)
 
 
 def _wanted(demand: Demand, loss: FloatArray) -> FloatArray:
@@ -239,12 +257,12 @@ def _finish(
     losses: Losses,
     temperature: FloatArray,
     warmth: _Warmth,
-    soc_path: FloatArray,
+    path: BatteryPath,
     active: NDArray[np.bool_],
     passes: int,
 ) -> Settled:
     """Solve the battery last, so that in - out - loss is an identity, and evaluate the losses once more as a check."""
-    given = answer(battery, _wanted(demand, losses.total), demand.duration, carry.soc, soc_path)
+    given = answer(battery, _wanted(demand, losses.total), demand.duration, carry.battery, path)
     shape = losses.total.shape
     link_voltage = np.broadcast_to(demand.link_voltage, shape)
     point = Point(given.voltage, link_voltage, given.current, losses.path_resistance, active)
@@ -260,7 +278,7 @@ def _finish(
     gain = np.zeros_like(temperature)
     if stage.modes is not None:
         gain = np.einsum("pq...,q...->p...", stage.modes.resistance_matrix(), losses.slope)
-    after = Carry(given.soc_end[..., -1:], warmth.state, warmth.mean[..., -1:])
+    after = Carry(state_after(given), warmth.state, warmth.mean[..., -1:])
     return Settled(
         power,
         curtailed,

@@ -10,8 +10,11 @@ trace continuous and weighs nothing.
 
 from __future__ import annotations
 
+import functools
+import operator
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -145,8 +148,9 @@ class Waveform:
 
         Notes
         -----
-        At a phase t of the folded period a segment contributes the copies j = 0..n-1 that lie at x + j/copies inside
-        its width, with x = (t - place) mod 1/copies: an arithmetic series, so the sum is exact and linear in t.
+        Measured in folded periods, a segment that begins at b and lasts w contributes at phase t its values at x,
+        x + 1, ... below w, with x = (t - b) mod 1. They are ceil(w - x) terms of an arithmetic series, so the sum is
+        exact and linear in t.
         """
         return _tiles(self.segments, copies)
 
@@ -228,31 +232,81 @@ def _tilt_factor(x: FloatArray) -> FloatArray:
 
 def _tiles(segments: Sequence[Segment], copies: Values) -> Waveform:
     """Return the sum of `copies` shifted copies of all segments as tiles of one period of 1/copies."""
-    n = np.asarray(copies, dtype=np.float64)
-    period = 1.0 / n
-    corners = [np.mod(s.place, period) for s in segments] + [np.mod(s.place + s.width, period) for s in segments]
-    edges = np.sort(np.stack(np.broadcast_arrays(*corners)), axis=0)
+    n = _array(copies)
+    runs = [_Run.of(s, n) for s in segments]
+    edges = _in_order(_distinct([r.begin for r in runs] + [r.end for r in runs]))
+    spans = [after - before for before, after in pairwise([*edges, edges[0] + 1.0])]
     tiles = []
-    for index in range(len(edges)):
-        begin = edges[index]
-        is_last = index == len(edges) - 1
-        span = (edges[0] + period if is_last else edges[index + 1]) - begin
-        middle, slope = _sum_of_copies(segments, begin + 0.5 * span, n)
-        half = 0.5 * span * slope
-        tiles.append(Segment(begin * n, span * n, middle - half, middle + half))
+    for begin, span in zip(edges, spans, strict=True):
+        half = 0.5 * span
+        middle, slope = _sum_of_copies(runs, begin + half)
+        tilt = half * slope
+        tiles.append(Segment(begin, span, middle - tilt, middle + tilt))
     return Waveform(tuple(tiles))
 
 
-def _sum_of_copies(segments: Sequence[Segment], phase: FloatArray, n: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return the summed current [A] and its slope [A/period] of `n` shifted copies at one phase."""
-    current: Any = 0.0
-    slope: Any = 0.0
-    for s in segments:
-        width = np.asarray(s.width, dtype=np.float64)
-        present = width > 0.0
-        rate = np.where(present, (s.end - s.start) / np.where(present, width, 1.0), 0.0)
-        first = np.mod(phase - s.place, 1.0 / n)
-        inside = np.where(present, np.maximum(np.floor((width - first) * n) + 1.0, 0.0), 0.0)
-        current = current + inside * s.start + rate * (inside * first + inside * (inside - 1.0) / (2.0 * n))
-        slope = slope + inside * rate
-    return _array(current), _array(slope)
+class _Run(NamedTuple):
+    """A segment measured in folded periods: where in one it begins and ends, its length, and its straight line.
+
+    level : current at its beginning less half of `slope` [A]
+    slope : rise per folded period [A]
+    """
+
+    begin: FloatArray
+    end: FloatArray
+    length: FloatArray
+    level: FloatArray
+    slope: FloatArray
+
+    @classmethod
+    def of(cls, segment: Segment, n: FloatArray) -> _Run:
+        length = _array(segment.width * n)
+        # The end is rounded as the next segment's begin is, so that neighbours share a corner to the last bit.
+        begin, end = _fraction(_array(segment.place * n)), _fraction(_array((segment.place + segment.width) * n))
+        # A width of zero has no slope; it meets no copy below, so any finite number serves.
+        slope = _array((segment.end - segment.start) / np.maximum(length, NEGLIGIBLE_WIDTH))
+        return cls(begin, end, length, segment.start - 0.5 * slope, slope)
+
+
+def _fraction(x: FloatArray) -> FloatArray:
+    return _array(x - np.floor(x))
+
+
+def _distinct(corners: Sequence[FloatArray]) -> list[FloatArray]:
+    """Return the corners without those that coincide at every step: neighbours share theirs, and tiles cost time."""
+    kept: list[FloatArray] = []
+    for corner in corners:
+        if not any(np.all(corner == other) for other in kept):
+            kept.append(corner)
+    return kept
+
+
+def _in_order(corners: list[FloatArray]) -> list[FloatArray]:
+    """Return the corners sorted step by step."""
+    if len(corners) > _MOST_EXCHANGES:
+        return list(np.sort(np.stack(np.broadcast_arrays(*corners)), axis=0))
+    ordered = list(corners)
+    for last in range(len(ordered) - 1, 0, -1):  # exchanges of whole arrays: np.sort walks short columns slowly
+        for i in range(last):
+            low, high = ordered[i], ordered[i + 1]
+            ordered[i], ordered[i + 1] = np.minimum(low, high), np.maximum(low, high)
+    return ordered
+
+
+_MOST_EXCHANGES = 8
+"""Up to this many corners, sorting by exchanges of whole arrays is quicker than a sort along the short axis."""
+
+
+def _sum_of_copies(runs: Sequence[_Run], phase: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return the summed current [A] and its slope [A per folded period] of all shifted copies at one phase."""
+    currents, slopes = [], []
+    for run in runs:
+        since = _fraction(phase - run.begin)
+        count = np.ceil(run.length - since)  # how many of since, since + 1, ... lie below the length
+        currents.append(count * (run.level + run.slope * (since + 0.5 * count)))
+        slopes.append(count * run.slope)
+    return _total(currents), _total(slopes)
+
+
+def _total(terms: Sequence[FloatArray]) -> FloatArray:
+    return _array(functools.reduce(operator.add, terms))
