@@ -36,11 +36,11 @@ def module(monkeypatch):
 
 GOOD = """
 from tideleg import hookimpl
-from tideleg_topologies.half_bridge import topology as _first_party
+from tideleg_topologies import half_bridge
 
 class Renamed:
     def __init__(self, name): self.name = name
-    def __getattr__(self, key): return getattr(_first_party(), key)
+    def __getattr__(self, key): return getattr(half_bridge.topology(), key)
 
 @hookimpl
 def topology(): return Renamed("{name}")
