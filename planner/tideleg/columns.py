@@ -49,10 +49,16 @@ def steps_frame(
         columns[name] = np.concatenate([piece[name] for piece in pieces])
         if not np.all(np.isfinite(columns[name])):
             raise ValueError(f"column {name} is not finite in step {int(np.argmin(np.isfinite(columns[name])))}")
-    columns["curtailed_cause"] = pd.Categorical.from_codes(columns["curtailed_cause"].astype(int), list(CAUSE_WORDS))
-    columns["direction"] = pd.Categorical.from_codes(columns["direction"].astype(int), list(DIRECTIONS))
-    columns["conduction"] = pd.Categorical.from_codes(columns["conduction"].astype(int), list(CONDUCTION))
+    columns["curtailed_cause"] = _words(columns["curtailed_cause"], CAUSE_WORDS)
+    columns["direction"] = _words(columns["direction"], DIRECTIONS)
+    columns["conduction"] = _words(columns["conduction"], CONDUCTION)
     return pd.DataFrame(columns, copy=False)
+
+
+def _words(codes: FloatArray, words: tuple[str, ...]) -> pd.Categorical[str]:
+    import pandas as pd
+
+    return pd.Categorical.from_codes(codes.astype(np.int64), pd.Index(list(words)))
 
 
 def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:

@@ -43,7 +43,7 @@ def battery_of(plan: Plan) -> Battery:
 
 
 def _on_grid(grid: FloatArray, curve: Curve) -> FloatArray:
-    return np.interp(grid, np.asarray(curve.soc, dtype=float), np.asarray(curve.value, dtype=float))
+    return np.asarray(np.interp(grid, np.asarray(curve.soc, dtype=float), np.asarray(curve.value, dtype=float)))
 
 
 def _or_infinite(limit: float | None) -> float:
@@ -113,7 +113,8 @@ def demand_of(plan: Plan, index: int, profile: Profile, stage: Stage) -> Demand:
                 key=f"mission.{index}.{name}",
             )
     held = given["coolant"] if given["coolant"] is not None else np.full(steps, REFERENCE_DEGC)
-    boundary = np.stack([given[name] for name in names]) if names else np.zeros((0, steps))
+    wanted = [column for column in (given[name] for name in names) if column is not None]
+    boundary = np.stack(wanted) if wanted else np.zeros((0, steps))
     link = _column(profile.link_voltage_v, plan.link.voltage, steps)
     greatest = _column(profile.power_max_w, np.inf, steps)
     least = _column(profile.power_min_w, -np.inf, steps)

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -156,8 +156,8 @@ def _mission_checks(limits: LimitsTable, seen: Seen) -> Iterator[LimitCheck]:
     allowed = limits.curtailed_energy if limits.curtailed_energy is not None else 0.0
     for mission, requested in seen.requested_j.items():
         share = seen.curtailed_j[mission] / requested if requested > 0.0 else 0.0
-        _, time, _ = _greatest(Seen({mission: seen.steps[mission]}, *seen[1:]), "curtailed_w")
-        when = (time if share > 0.0 else None, mission)
+        _, time_s, _ = _greatest(Seen({mission: seen.steps[mission]}, *seen[1:]), "curtailed_w")
+        when = (time_s if share > 0.0 else None, mission)
         used = share / allowed if allowed > 0.0 else (0.0 if share <= 0.0 else 1.0 + share)
         yield _upper("curtailed energy", "mission", share, allowed, "share", when, used)
     if limits.efficiency is not None:
@@ -182,8 +182,8 @@ def _greatest(seen: Seen, *columns: str) -> tuple[float, float, str]:
 
 
 def _upper(
-    name: str, part: str, value: float, limit: float, unit: str, when: object, used: float | None = None
+    name: str, part: str, value: float, limit: float, unit: str, when: Sequence[Any], used: float | None = None
 ) -> LimitCheck:
-    time, mission = when  # type: ignore[misc]
+    time, mission = when
     share = value / limit if used is None else used
     return LimitCheck(name, part, value, limit, unit, limit - value, share, time, mission, bool(value <= limit))

@@ -32,6 +32,7 @@ from tideleg.battery import (
 from tideleg.contract import Point
 from tideleg.errors import NoEquilibriumError
 from tideleg.heat import Propagator
+from tideleg.rootsearch import RootSearch
 from tideleg.stage import Losses, Stage
 from tideleg.waveform import FloatArray
 
@@ -44,6 +45,9 @@ TEMPERATURE_TOLERANCE = 1e-5
 
 ENERGY_TOLERANCE = 1e-10
 """... and when the loss energy moves by no more than this share of the battery's throughput in a pass [-]."""
+
+POWER_FLOOR = 1e-7
+"""... or by no more than this mean power, where next to nothing flows [W]."""
 
 CEILING = 1000.0
 """A part above this temperature has run away: no data holds there [degC]."""
@@ -188,6 +192,7 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
     shape = (len(carry.battery.soc), len(demand.power))
     propagator = None if stage.modes is None else Propagator(stage.modes, demand.duration)
     temperature = np.broadcast_to(carry.temperature, (len(stage.seated), *shape)).copy()
+    search = RootSearch()
     loss = np.zeros(shape)
     path = resting_path(carry.battery, shape[-1])
     path_resistance = np.zeros(shape)
@@ -203,10 +208,11 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
         still = _battery_still(path, path_of(given))
         temperature = temperature + moved
-        loss, path_resistance, path = losses.total, losses.path_resistance, path_of(given)
+        loss = search.next(loss, losses.total)
+        path_resistance, path = losses.path_resistance, path_of(given)
         _refuse_runaway(stage, temperature, losses, demand, elapsed)
         still = still and float(np.max(np.abs(moved), initial=0.0)) < TEMPERATURE_TOLERANCE
-        if still and np.all(drift <= ENERGY_TOLERANCE * throughput + 1e-15):
+        if still and np.all(drift <= ENERGY_TOLERANCE * throughput + POWER_FLOOR * demand.duration.sum()):
             return _finish(stage, battery, demand, carry, losses, temperature, response, path, active, passes)
     raise _unsettled(stage, moved, losses, demand, elapsed)
 

@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from tideleg.battery import Battery, Cause, answer, at_rest, path_of, resting_path
 
 

@@ -5,6 +5,7 @@ import types
 from importlib import metadata
 
 import pytest
+
 from tideleg.errors import InputError, PluginError
 from tideleg.registry import call_plugin, collect, installed
 

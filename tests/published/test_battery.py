@@ -6,6 +6,7 @@ systems (P = V_oc I_sc/4). Tolerances cover the printed digits.
 
 import numpy as np
 import pytest
+
 from tideleg.battery import Battery, Cause, answer, at_rest, current_at_power, path_of, resting_path
 
 E, R = 400.0, 0.1

@@ -1,0 +1,18 @@
+"""Profiles in: reading, road load, and what is in them."""
+
+from tideleg.mission.passport import Passport, passport
+from tideleg.mission.profile import Profile
+from tideleg.mission.reading import read_profile
+from tideleg.mission.road_load import Demanded, Vehicle, Wheel, at_wheels, stage_power
+
+__all__ = [
+    "Demanded",
+    "Passport",
+    "Profile",
+    "Vehicle",
+    "Wheel",
+    "at_wheels",
+    "passport",
+    "read_profile",
+    "stage_power",
+]

@@ -1,0 +1,88 @@
+"""One JSON Schema of the plan with everything that is installed, so that an editor completes and checks."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from pydantic import BaseModel
+
+from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
+from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase
+
+_BASES: dict[PartKind, list[type[BaseModel]]] = {
+    "switch": [SwitchBase],
+    "inductor": [InductorBase],
+    "capacitor": [CapacitorBase],
+    "busbar": [],
+    "control": [],
+}
+
+_CURVE = {
+    "description": "a constant with unit, pairs [[state of charge, value], ...], or a CSV file name",
+    "anyOf": [{"type": "number"}, {"type": "string"}, {"type": "array", "items": {"type": "array", "minItems": 2}}],
+}
+
+
+def plan_schema(
+    topologies: Sequence[Topology], loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+) -> dict[str, Any]:
+    """Return the JSON Schema (draft 2020-12) of a plan, with the keys of every plugin in its place."""
+    schema = Plan.model_json_schema()
+    definitions = schema["$defs"]
+    for key in ("open_circuit_voltage", "resistance", "resistance_charge"):
+        definitions["BatteryTable"]["properties"][key] = _CURVE
+    definitions.pop("Curve", None)
+    definitions["StageTable"] = _stage(topologies, loss_models, cooling_models)
+    definitions["CoolingTable"] = _cooling(cooling_models)
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
+
+
+def _stage(
+    topologies: Sequence[Topology], loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+) -> dict[str, Any]:
+    keys: dict[str, Any] = {"topology": {"enum": [t.name for t in topologies]}}
+    kinds: dict[str, PartKind] = {"busbar": "busbar", "control": "control"}
+    for topology in topologies:
+        keys |= _properties(topology.settings)
+        kinds |= {slot.table: slot.kind for slot in _slots(topology)}
+    for table, kind in sorted(kinds.items()):
+        keys[table] = _part(kind, loss_models, cooling_models)
+    return {"type": "object", "properties": keys, "required": ["topology"], "additionalProperties": False}
+
+
+def _slots(topology: Topology) -> Sequence[Any]:
+    """Return a topology's slots for settings built from its defaults; names of tables do not depend on numbers."""
+    fields = topology.settings.model_fields
+    given = {name: 1 for name, field in fields.items() if field.is_required()}
+    return topology.slots(topology.settings.model_validate(given))
+
+
+def _part(kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
+    models = [*_BASES[kind], *(m.settings for m in loss_models if m.reads == kind)]
+    models += [m.part_settings[kind] for m in cooling_models if kind in m.part_settings]
+    keys: dict[str, Any] = {"part": {"type": "string", "description": "file (TOML) whose keys are merged in"}}
+    for model in models:
+        keys |= _properties(model)
+    return {"type": "object", "properties": keys, "additionalProperties": False}
+
+
+def _cooling(cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
+    keys: dict[str, Any] = {"model": {"enum": [m.name for m in cooling_models], "default": "plate"}}
+    for model in cooling_models:
+        keys |= _properties(model.settings)
+    return {"type": "object", "properties": keys, "additionalProperties": False}
+
+
+def _properties(model: type[BaseModel]) -> dict[str, Any]:
+    """Return the properties of a plugin's model, its own definitions written in place."""
+    schema = model.model_json_schema()
+    return {name: _inlined(value, schema.get("$defs", {})) for name, value in schema.get("properties", {}).items()}
+
+
+def _inlined(value: Any, definitions: dict[str, Any]) -> Any:
+    if isinstance(value, dict):
+        if "$ref" in value:
+            return _inlined(definitions[value["$ref"].rpartition("/")[2]], definitions)
+        return {key: _inlined(inner, definitions) for key, inner in value.items()}
+    return [_inlined(inner, definitions) for inner in value] if isinstance(value, list) else value

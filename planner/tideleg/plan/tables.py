@@ -1,0 +1,235 @@
+"""The tables of a plan: what a person may write, with dimensions, signs and ranges; no physics."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated, Any, Literal, Self
+
+from pydantic import BaseModel, ConfigDict, Field, PrivateAttr, model_validator
+
+from tideleg import quantity as q
+from tideleg.plan.curve import Curve
+
+Positive = Field(gt=0.0)
+NotNegative = Field(ge=0.0)
+
+
+class Table(BaseModel):
+    """A table of the plan: frozen, and unknown keys are refused."""
+
+    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
+
+
+class BatteryTable(Table):
+    """[battery]; pack values after reading, also where cells were given."""
+
+    open_circuit_voltage: Curve
+    resistance: Curve = Curve((0.0,), (0.0,))
+    resistance_charge: Curve | None = None
+    cells_in_series: int | None = Field(default=None, ge=1)
+    cells_in_parallel: int | None = Field(default=None, ge=1)
+    capacity: Annotated[q.Charge, Positive] | None = None
+    start_soc: Annotated[q.Share, Field(ge=0.0, le=1.0)] | None = None
+    soc_window: tuple[q.Share, q.Share] = (0.0, 1.0)
+    current_limit_discharge: Annotated[q.Current, Positive] | None = None
+    current_limit_charge: Annotated[q.Current, Positive] | None = None
+    voltage_min: Annotated[q.Voltage, Positive] | None = None
+    voltage_max: Annotated[q.Voltage, Positive] | None = None
+    rc_pairs: tuple[tuple[Annotated[q.Resistance, Positive], Annotated[q.Time, Positive]], ...] = ()
+
+    @model_validator(mode="after")
+    def _is_a_battery(self) -> Self:
+        low, high = self.soc_window
+        curves = (self.open_circuit_voltage, self.resistance, self.resistance_charge)
+        if not 0.0 <= low < high <= 1.0:
+            raise ValueError(f"soc_window: found [{low:g}, {high:g}]; give two shares, 0 <= low < high <= 1")
+        if self.capacity is None and any(curve is not None and len(curve.soc) > 1 for curve in curves):
+            raise ValueError("capacity is missing: a curve over the state of charge needs it, such as '180 Ah'")
+        if self.capacity is not None and self.start_soc is None:
+            raise ValueError("start_soc is missing: with a capacity the start must be given, such as start_soc = 0.8")
+        if self.start_soc is not None and not low <= self.start_soc <= high:
+            raise ValueError(f"start_soc: found {self.start_soc:g}, outside soc_window [{low:g}, {high:g}]")
+        if any(v <= 0.0 for v in self.open_circuit_voltage.value):
+            raise ValueError("open_circuit_voltage must be above zero everywhere")
+        if any(curve is not None and min(curve.value) < 0.0 for curve in curves[1:]):
+            raise ValueError("resistance must not be negative")
+        for curve in curves:
+            if curve is not None and len(curve.soc) > 1 and (curve.soc[0] > low or curve.soc[-1] < high):
+                raise ValueError(
+                    f"a curve covers the state of charge from {curve.soc[0]:g} to {curve.soc[-1]:g}, not the whole"
+                    f" soc_window [{low:g}, {high:g}]; nothing is extrapolated: add points or narrow the window"
+                )
+        return self
+
+
+class LinkTable(Table):
+    """[link]; capacitance is that of the whole bus, for energy and discharge."""
+
+    voltage: Annotated[q.Voltage, Positive]
+    trip_voltage: Annotated[q.Voltage, Positive] | None = None
+    capacitance: Annotated[q.Capacitance, Positive] | None = None
+
+    @model_validator(mode="after")
+    def _trips_above(self) -> Self:
+        if self.trip_voltage is not None and self.trip_voltage <= self.voltage:
+            raise ValueError(f"trip_voltage: found {self.trip_voltage:g} V, not above voltage {self.voltage:g} V")
+        return self
+
+
+class StageTable(Table):
+    """[stage]: the topology, its keys as written, and the part tables as written; plugins validate both.
+
+    origins : file of each part key that came from a part file, by dotted key
+    """
+
+    topology: str
+    settings: dict[str, Any] = {}
+    parts: dict[str, dict[str, Any]] = {}
+    origins: dict[str, Path] = {}
+
+
+class CoolingTable(Table):
+    """[cooling]: the model, and its keys as written."""
+
+    model: str = "plate"
+    settings: dict[str, Any] = {}
+
+
+class LossesTable(Table):
+    """[losses]: names of loss plugins to leave out."""
+
+    leave_out: tuple[str, ...] = ()
+
+
+class LimitsTable(Table):
+    """[limits]; every key optional, shares between 0 and 1 or in percent."""
+
+    junction_temperature: q.Temperature | None = None
+    inductor_temperature: q.Temperature | None = None
+    capacitor_temperature: q.Temperature | None = None
+    inductor_peak_current: Annotated[q.Current, Positive] | None = None
+    switch_current: Annotated[q.Current, Positive] | None = None
+    ripple_ratio: Annotated[q.Share, Positive] | None = None
+    voltage_utilisation: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
+    battery_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
+    link_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
+    battery_capacitor_current: Annotated[q.Current, Positive] | None = None
+    link_capacitor_current: Annotated[q.Current, Positive] | None = None
+    curtailed_energy: Annotated[q.Share, Field(ge=0.0, le=1.0)] | None = None
+    efficiency: Annotated[q.Share, Field(gt=0.0, lt=1.0)] | None = None
+
+
+class VehicleTable(Table):
+    """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2."""
+
+    mass: Annotated[q.Mass, Positive]
+    rotating_mass_factor: float = Field(default=1.03, ge=1.0)
+    drag_area: Annotated[q.Area, NotNegative] | None = None
+    rolling_resistance: float | None = Field(default=None, ge=0.0)
+    air_density: Annotated[q.Density, Positive] = 1.2
+    f0: q.Force | None = None
+    f1: q.ForcePerSpeed | None = None
+    f2: q.ForcePerSquaredSpeed | None = None
+    drivetrain_efficiency: Annotated[q.Share, Field(gt=0.0, le=1.0)] = 1.0
+    regeneration_limit: Annotated[q.Power, NotNegative] | None = None
+    regeneration_share: Annotated[q.Share, Field(ge=0.0, le=1.0)] = 1.0
+    auxiliary_power: Annotated[q.Power, NotNegative] = 0.0
+
+    @model_validator(mode="after")
+    def _one_form(self) -> Self:
+        physical = self.drag_area is not None and self.rolling_resistance is not None
+        fitted = self.f0 is not None and self.f1 is not None and self.f2 is not None
+        mixed = (self.drag_area is not None or self.rolling_resistance is not None) and any(
+            f is not None for f in (self.f0, self.f1, self.f2)
+        )
+        if mixed or physical == fitted:
+            raise ValueError("give drag_area and rolling_resistance, or f0, f1 and f2: exactly one of the two forms")
+        return self
+
+
+class SizeTable(Table):
+    """[size]: bounds for `tideleg size`."""
+
+    leg_current: Annotated[q.Current, Positive] | None = None
+    legs_max: int = Field(default=8, ge=1)
+    in_parallel_max: int = Field(default=8, ge=1)
+    voltage_classes: tuple[q.Voltage, ...] = (100.0, 650.0, 750.0, 1200.0, 1700.0)
+    plate_resistance_range: tuple[q.ThermalResistance, q.ThermalResistance] = (2e-3, 0.2)
+
+
+class SwitchBase(Table):
+    """Core-known keys of a switch."""
+
+    name: str | None = None
+    in_parallel: int = Field(default=1, ge=1)
+    rated_voltage: Annotated[q.Voltage, Positive] | None = None
+
+
+class InductorBase(Table):
+    """Core-known keys of an inductor."""
+
+    name: str | None = None
+    inductance: Annotated[q.Inductance, Positive]
+    saturation_current: Annotated[q.Current, Positive] | None = None
+
+
+class CapacitorBase(Table):
+    """Core-known keys of a capacitor."""
+
+    name: str | None = None
+    capacitance: Annotated[q.Capacitance, Positive] | None = None
+    rated_voltage: Annotated[q.Voltage, Positive] | None = None
+    rated_current: Annotated[q.Current, Positive] | None = None
+
+
+class MissionTable(Table):
+    """One [[mission]]."""
+
+    profile: str
+    name: str | None = None
+    passes_per_year: float = Field(default=1.0, gt=0.0)
+    terminals: Literal["link", "battery"] = "link"
+    interpolation: Literal["hold", "linear"] = "hold"
+    sign: Literal["discharge", "charge"] = "discharge"
+    coolant: q.Temperature | None = None
+    ambient: q.Temperature | None = None
+    start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
+
+
+class Plan(Table):
+    """A whole plan."""
+
+    title: str
+    battery: BatteryTable
+    link: LinkTable
+    stage: StageTable
+    mission: tuple[MissionTable, ...] = Field(min_length=1)
+    cooling: CoolingTable | None = None
+    losses: LossesTable = LossesTable()
+    limits: LimitsTable = LimitsTable()
+    vehicle: VehicleTable | None = None
+    size: SizeTable | None = None
+    _file: Path | None = PrivateAttr(default=None)
+    _folder: Path = PrivateAttr(default=Path())
+    _text: str = PrivateAttr(default="")
+    _extra_files: tuple[Path, ...] = PrivateAttr(default=())
+
+    @property
+    def file(self) -> Path | None:
+        """The plan file, or None for a plan made in Python."""
+        return self._file
+
+    @property
+    def folder(self) -> Path:
+        """Where relative file names start."""
+        return self._folder
+
+    @property
+    def text(self) -> str:
+        """The text of the plan file, for error lines; empty for a plan made in Python."""
+        return self._text
+
+    @property
+    def extra_files(self) -> tuple[Path, ...]:
+        """Part files and curve files that the plan read."""
+        return self._extra_files

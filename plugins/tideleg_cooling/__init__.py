@@ -1,0 +1,1 @@
+"""Cooling models: each describes a thermal network from its own keys."""

@@ -1,0 +1,62 @@
+"""Series resistance of a port capacitor."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Annotated
+
+import numpy as np
+from pydantic import BaseModel, ConfigDict, Field
+
+from tideleg import Exchange, FloatArray, Line, LossTerm, PartKind, Timing, Values, hookimpl, quantity
+
+
+class CapacitorSettings(BaseModel):
+    """Keys of a capacitor: esr, and the ripple that others on the port add (rms)."""
+
+    model_config = ConfigDict(extra="forbid")
+
+    esr: Annotated[quantity.Resistance, Field(ge=0.0)] | None = None
+    external_ripple_current: Annotated[quantity.Current, Field(ge=0.0)] = 0.0
+
+
+def esr_from_dissipation(dissipation_factor: Values, frequency: Values, capacitance: Values) -> Values:
+    """Return tan(delta)/(2 pi f C) [Ω]: Infineon, PFC boost converter design guide, DN 2013-01, Eq. 32."""
+    return dissipation_factor / (2.0 * np.pi * frequency * capacitance)
+
+
+@dataclass(frozen=True)
+class EsrTerm:
+    """ESR times the mean square of the whole ac current; ripple from outside adds in squares (no shared phase)."""
+
+    esr: Values
+    external: Values
+    mechanism: str = "capacitor ESR"
+    ohmic: bool = False
+    heats: bool = True
+
+    def at(self, part: Exchange, timing: Timing, temperature: FloatArray) -> Line:
+        """Return the loss of the capacitor [W]; the resistance is taken as constant."""
+        watts = self.esr * (part.current.ac_mean_square() + self.external * self.external) + np.zeros_like(temperature)
+        return Line(watts, np.zeros_like(watts))
+
+
+@dataclass(frozen=True)
+class CapacitorEsr:
+    """The model."""
+
+    name: str = "capacitor-esr"
+    source: str = "ESR I_rms²: Infineon, PFC boost converter design guide, DN 2013-01, Eq. 34"
+    reads: PartKind = "capacitor"
+    mechanisms: tuple[str, ...] = ("capacitor ESR",)
+    settings: type[BaseModel] = CapacitorSettings
+
+    def terms(self, settings: CapacitorSettings) -> tuple[LossTerm[Exchange], ...]:
+        """Return the term if a series resistance is given."""
+        return () if settings.esr is None else (EsrTerm(settings.esr, settings.external_ripple_current),)
+
+
+@hookimpl
+def loss_model() -> CapacitorEsr:
+    """Offer the capacitor's series resistance."""
+    return CapacitorEsr()

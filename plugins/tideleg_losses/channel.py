@@ -1,0 +1,95 @@
+"""Conduction of a MOSFET channel, both ways."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Annotated, Self
+
+import numpy as np
+from pydantic import BaseModel, ConfigDict, Field, model_validator
+
+from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, Values, hookimpl, quantity
+from tideleg_losses.edges import diode_current_at_begin, diode_current_at_end
+
+REFERENCE_DEGC = 25.0
+COLDEST_DEGC, HOTTEST_DEGC = -60.0, 250.0
+
+
+class ChannelSettings(BaseModel):
+    """Keys of [stage.switch]: R(T) = on_resistance (1 + slope (T - 25) + curvature (T - 25)²)."""
+
+    model_config = ConfigDict(extra="forbid")
+
+    on_resistance: Annotated[quantity.Resistance, Field(gt=0.0)] | None = None
+    on_resistance_slope: quantity.RelativeSlope = 0.0
+    on_resistance_curvature: float = 0.0
+
+    @model_validator(mode="after")
+    def _stays_positive(self) -> Self:
+        degc = np.linspace(COLDEST_DEGC, HOTTEST_DEGC, 311)
+        factor = resistance_factor(degc, self.on_resistance_slope, self.on_resistance_curvature)
+        if np.any(factor <= 0.0):
+            at = degc[int(np.argmax(factor <= 0.0))]
+            raise ValueError(
+                f"on_resistance_slope and on_resistance_curvature make the resistance vanish at {at:.0f} degC;"
+                f" it must stay positive from {COLDEST_DEGC:.0f} to {HOTTEST_DEGC:.0f} degC"
+            )
+        return self
+
+
+def resistance_factor(degc: FloatArray, slope: Values, curvature: Values) -> FloatArray:
+    """Return R(T)/R(25 degC) [-]."""
+    rise = degc - REFERENCE_DEGC
+    return np.asarray(1.0 + slope * rise + curvature * rise * rise)
+
+
+def channel_mean_square(part: Position, timing: Timing) -> FloatArray:
+    """Return the mean square of the run less the dead times, in which the diode carries the current [A²].
+
+    The dead-time loss counts the diode in full, so the channel must not count the same time again.
+    """
+    by_diode = diode_current_at_begin(part) ** 2 + diode_current_at_end(part) ** 2
+    whole = part.current.mean_square()
+    return np.maximum(whole - by_diode * timing.dead_time * timing.frequency, 0.0)
+
+
+@dataclass(frozen=True)
+class ChannelTerm:
+    """R(T) times the mean square: Joule's law. Infineon, PFC boost converter design guide, DN 2013-01, Eq. 17."""
+
+    resistance: Values
+    slope: Values
+    curvature: Values
+    mechanism: str = "channel conduction"
+    ohmic: bool = True
+    heats: bool = True
+
+    def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:
+        """Return the loss of one chip [W] and its slope [W/K]."""
+        square = channel_mean_square(part, timing) * part.driven
+        rise = temperature - REFERENCE_DEGC
+        watts = self.resistance * resistance_factor(temperature, self.slope, self.curvature) * square
+        return Line(watts, self.resistance * (self.slope + 2.0 * self.curvature * rise) * square)
+
+
+@dataclass(frozen=True)
+class Channel:
+    """The model."""
+
+    name: str = "channel"
+    source: str = "P = R(T) I_rms², Joule's law; R(T) quadratic: common practice, no source"
+    reads: PartKind = "switch"
+    mechanisms: tuple[str, ...] = ("channel conduction",)
+    settings: type[BaseModel] = ChannelSettings
+
+    def terms(self, settings: ChannelSettings) -> tuple[LossTerm[Position], ...]:
+        """Return the term if an on-resistance is given."""
+        if settings.on_resistance is None:
+            return ()
+        return (ChannelTerm(settings.on_resistance, settings.on_resistance_slope, settings.on_resistance_curvature),)
+
+
+@hookimpl
+def loss_model() -> Channel:
+    """Offer channel conduction."""
+    return Channel()
