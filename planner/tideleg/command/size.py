@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import shutil
 from pathlib import Path
 
 HELP = "size a stage from its limits and prove it"
@@ -27,11 +28,17 @@ def execute(given: argparse.Namespace) -> int:
 
     plan = load_plan(given.plan)
     folder = given.out or plan.folder / "sized"
-    with shown() as progress:
-        sized = size(plan, destination=folder / "sized.toml", progress=progress)
+    # The sized plan is first written beside, at the same depth, so that its relative file names hold in both places.
+    beside = folder.with_name(f".{folder.name}.sized.toml") / "sized.toml"
+    try:
+        with shown() as progress:
+            sized = size(plan, destination=beside, progress=progress)
+        text = beside.read_text(encoding="utf-8")
+    finally:
+        shutil.rmtree(beside.parent, ignore_errors=True)
     console = Console()
     print_page(sized.outcome, console)
     print_sizing(sized, console)
-    written = write_results(sized.outcome, folder)
-    console.print(f"\n{len(written) + 1} files in {folder}; the plan is {folder / 'sized.toml'}", soft_wrap=True)
+    written = write_results(sized.outcome, folder, extra={"sized.toml": text})
+    console.print(f"\n{len(written)} files in {folder}; the plan is {folder / 'sized.toml'}", soft_wrap=True)
     return 3 if given.enforce and not sized.outcome.holds else 0
