@@ -128,10 +128,10 @@ def _sentences(facts: SafetyFacts, n: Safety) -> tuple[str, ...]:
         _energy_sentence(facts, n),
         _short_sentence(n),
         _dump_sentence(facts, n),
-        "After switching off, wait for the discharge and measure both ports before touching: capacitors keep charge, and"
-        " the battery stays live behind its contactors.",
-        "All numbers here are planning estimates from the plan's own data. They are no statement of compliance with any"
-        " standard and no release for building or operation.",
+        "After switching off, wait for the discharge and measure both ports before touching: capacitors keep charge,"
+        " and the battery stays live behind its contactors.",
+        "All numbers here are planning estimates from the plan's own data. They are no statement of compliance with"
+        " any standard and no release for building or operation.",
     )
 
 
@@ -139,14 +139,14 @@ def _energy_sentence(facts: SafetyFacts, n: Safety) -> str:
     if n.stored_energy_j is None or n.capacitance_f is None:
         return "Stored energy of the link is not known: the plan gives no link capacitance. Treat it as dangerous."
     which = "whole bus" if facts.bus_capacitance_f is not None else "the stage's own capacitor only"
-    text = f"The link holds {n.stored_energy_j:.4g} J at {facts.highest_link_voltage_v:.4g} V ({n.capacitance_f * 1e6:.4g} uF,"
-    text += f" {which})."
+    farad = f"{n.capacitance_f * 1e6:.4g} uF, {which}"
+    text = f"The link holds {n.stored_energy_j:.4g} J at {facts.highest_link_voltage_v:.4g} V ({farad})."
     if n.discharge_resistor_ohm is None:
         return text
     return (
         f"{text} A resistor of at most {n.discharge_resistor_ohm:.4g} ohm brings it to 60 V in {DISCHARGE_SECONDS:g} s"
-        f" (figures of IEC 60204-1; rules differ, the local code decides), would lose {n.discharge_resistor_loss_w:.4g} W"
-        f" if always connected, and leaves {n.energy_at_60v_j:.3g} J at 60 V."
+        f" (figures of IEC 60204-1; rules differ, the local code decides), would lose"
+        f" {n.discharge_resistor_loss_w:.4g} W if always connected, and leaves {n.energy_at_60v_j:.3g} J at 60 V."
     )
 
 
@@ -156,7 +156,7 @@ def _short_sentence(n: Safety) -> str:
         size = f"up to about {n.link_short_current_a:.4g} A"
     return (
         f"A short of the link draws {size} from the battery through the upper diodes, rising at first by"
-        f" {n.link_short_rise_a_per_us:.3g} A/us; the stage cannot interrupt it. A fuse and a contactor rated for it must."
+        f" {n.link_short_rise_a_per_us:.3g} A/us; the stage cannot interrupt it; a fuse and a contactor must."
     )
 
 

@@ -168,17 +168,22 @@ def _mission_checks(limits: LimitsTable, seen: Seen) -> Iterator[LimitCheck]:
         )
 
 
-def _greatest(seen: Seen, *columns: str) -> tuple[float, float, str]:
-    """Return (greatest magnitude of the columns over all missions, its time [s], its mission)."""
-    best = (-np.inf, 0.0, "")
+def _greatest(seen: Seen, *columns: str) -> tuple[float, float | None, str | None]:
+    """Return (greatest magnitude of the columns over all missions, its time [s], its mission).
+
+    A quantity that never changes has no instant: time and mission are None.
+    """
+    best: tuple[float, float | None, str | None] = (-np.inf, None, None)
+    varies = False
     for mission, steps in seen.steps.items():
         for column in columns:
             values = steps[column].to_numpy()
             magnitude = values if column.endswith("_degc") else np.abs(values)
             row = int(np.argmax(magnitude))
+            varies = varies or bool(np.ptp(magnitude) > 0.0) or (len(magnitude) == 1)
             if magnitude[row] > best[0]:
                 best = (float(magnitude[row]), float(steps["time_s"].iloc[row]), mission)
-    return best
+    return best if varies else (best[0], None, None)
 
 
 def _upper(

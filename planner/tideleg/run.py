@@ -150,7 +150,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         thermal=thermal,
         parts=part_entries(plan, stage),
         stage_facts=stage_facts(plan, stage),
-        worst=worst_instant(stage, binding, steps, {name: r.blocks for name, r in runs.items()}),
+        worst=worst_instant(stage, checks, steps, {name: r.blocks for name, r in runs.items()}),
         changes=(),
         safety=_safety(plan, stage, battery, steps),
         not_modelled=stage.not_modelled + unchecked,

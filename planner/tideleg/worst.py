@@ -20,14 +20,20 @@ if TYPE_CHECKING:
 
 def worst_instant(
     stage: Stage,
-    binding: LimitCheck | None,
+    checks: tuple[LimitCheck, ...],
     steps: Mapping[str, pd.DataFrame],
     blocks: Mapping[str, list[Settled]],
 ) -> WorstInstant:
-    """Return the step at which the binding limit is met; without one, the step of greatest loss."""
-    if binding is not None and binding.time_s is not None and binding.mission is not None:
-        mission, why = binding.mission, f"{binding.name} of {binding.part.replace('_', ' ')}"
-        row = int(np.searchsorted(steps[mission]["time_s"].to_numpy(), binding.time_s))
+    """Return the step at which the tightest limit that has an instant is met; without one, that of greatest loss."""
+    timed = [check for check in checks if check.time_s is not None and check.mission is not None and check.used > 0.0]
+    if timed:
+        first = timed[0]
+        assert first.mission is not None
+        mission, why = (
+            first.mission,
+            f"{first.name} of {first.part.replace('_', ' ')}, tightest of the limits that vary",
+        )
+        row = int(np.searchsorted(steps[mission]["time_s"].to_numpy(), first.time_s))
     else:
         mission = max(steps, key=lambda name: float(steps[name]["loss_w"].max()))
         row, why = int(steps[mission]["loss_w"].to_numpy().argmax()), "greatest loss"

@@ -37,7 +37,8 @@ class CoreSettings(BaseModel):
 
 def k_in_si(k: float, alpha: float, beta: float, units: str) -> float:
     """Return k in W/m³, Hz, T: 1 mW/cm³ = 1 kW/m³, 1 Hz = 1e-3 kHz, 1 T = 1e3 mT."""
-    return k if units == "W/m3, Hz, T" else k * math.pow(10.0, 3.0 - 3.0 * alpha + 3.0 * beta)
+    scale: float = 1.0 if units == "W/m3, Hz, T" else 10.0 ** (3.0 - 3.0 * alpha + 3.0 * beta)
+    return k * scale
 
 
 def cosine_integral(alpha: float) -> float:

@@ -39,7 +39,8 @@ def settled(battery, power, seconds):
     st.lists(st.floats(0.1, 600.0), min_size=60, max_size=60),
 )
 def test_charge_and_energy_close_and_no_limit_is_passed(power, seconds):
-    battery = pack(discharge_current_limit=250.0, charge_current_limit=180.0, lowest_voltage=310.0, highest_voltage=425.0)
+    limits = {"discharge_current_limit": 250.0, "charge_current_limit": 180.0}
+    battery = pack(**limits, lowest_voltage=310.0, highest_voltage=425.0)
     seconds = np.array(seconds[: len(power)])
     found = settled(battery, np.array(power), seconds)
     moved = found.soc_start - found.soc_end

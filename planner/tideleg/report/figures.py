@@ -148,7 +148,7 @@ def draw_temperatures(outcome: Outcome, mission: MissionResult) -> tuple[Figure,
 def draw_losses(outcome: Outcome) -> tuple[Figure, str]:
     """Draw the mean loss of every mechanism, split by direction."""
     seconds = sum(m.passes_per_year * float(m.steps["duration_s"].sum()) for m in outcome.missions)
-    parts = {}
+    parts: dict[str, FloatArray] = {}
     for mission in outcome.missions:
         for e in mission.losses:
             row = parts.setdefault(e.mechanism, np.zeros(3))

@@ -20,10 +20,11 @@ if TYPE_CHECKING:
 
 def print_page(outcome: Outcome, console: Console) -> None:
     """Print page one; it also reads well at 80 columns and where the output is no terminal."""
-    mark = "HOLDS" if outcome.holds else "DOES NOT HOLD"
     console.print()
     console.print(Text(outcome.title, style="bold"))
-    console.print(Panel(Text(f"{mark}: {outcome.verdict}"), box=box.HEAVY, expand=False))
+    console.print(
+        Panel(Text(outcome.verdict[0].upper() + outcome.verdict[1:] + ".", style="bold"), box=box.HEAVY, expand=False)
+    )
     _section(console, "Limits, tightest first")
     _limits(console, outcome)
     _section(console, "The stage")
