@@ -28,12 +28,9 @@ def worst_instant(
     timed = [check for check in checks if check.time_s is not None and check.mission is not None and check.used > 0.0]
     if timed:
         first = timed[0]
-        assert first.mission is not None
-        mission, why = (
-            first.mission,
-            f"{first.name} of {first.part.replace('_', ' ')}, tightest of the limits that vary",
-        )
-        row = int(np.searchsorted(steps[mission]["time_s"].to_numpy(), first.time_s))
+        mission, time = str(first.mission), float(first.time_s or 0.0)
+        why = f"{first.name} of {first.part.replace('_', ' ')}, tightest of the limits that vary"
+        row = int(np.searchsorted(steps[mission]["time_s"].to_numpy(), time))
     else:
         mission = max(steps, key=lambda name: float(steps[name]["loss_w"].max()))
         row, why = int(steps[mission]["loss_w"].to_numpy().argmax()), "greatest loss"

@@ -51,7 +51,7 @@ def igse_k(k: float, alpha: float, beta: float) -> float:
 
     K. Venkatachalam, C. R. Sullivan, T. Abdallah, H. Tacca, IEEE Workshop on Computers in Power Electronics, 2002.
     """
-    return k / ((2.0 * math.pi) ** (alpha - 1.0) * 2.0 ** (beta - alpha) * cosine_integral(alpha))
+    return float(k / ((2.0 * math.pi) ** (alpha - 1.0) * 2.0 ** (beta - alpha) * cosine_integral(alpha)))
 
 
 def flux_swing(widths: list[Values], rates: list[Values], frequency: Values) -> FloatArray:

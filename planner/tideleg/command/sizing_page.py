@@ -14,7 +14,9 @@ if TYPE_CHECKING:
 
 def print_sizing(sized: Sized, console: Console) -> None:
     """Print the decisions and the notes of a sizing."""
-    table = Table("value", "was", "now", "set by", "at", title="What was sized, and by what", title_justify="left")
+    table = Table(title="What was sized, and by what", title_justify="left")
+    for head in ("value", "was", "now", "set by", "at"):
+        table.add_column(head, overflow="fold")
     for decision in sized.decisions:
         table.add_row(decision.key, decision.before or "not given", str(decision.value), decision.set_by, decision.at)
     console.print()

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from tideleg.decide.changes import part_number, with_part, with_stage
-from tideleg.decide.trial import Decision, Trial, Worst, rounded_up, worst_over
+from tideleg.decide.trial import Decision, Trial, Worst, rounded_down, rounded_up, worst_over
 from tideleg.outcome import Outcome
 from tideleg.plan import format_quantity
 
@@ -111,10 +111,10 @@ def _size_capacitor(trial: Trial, outcome: Outcome, port: str) -> Trial:
     before = str(plan.stage.parts[table].get("capacitance", ""))
     keys: dict[str, str] = {"capacitance": format_quantity(value, "capacitance")}
     if rated is not None:
-        keys["rated_current"] = format_quantity(rated * value / present, "current")
+        keys["rated_current"] = format_quantity(rounded_down(rated * value / present, 3), "current")
     esr = part_number(plan, table, "esr", "resistance")
     if esr is not None:
-        keys["esr"] = format_quantity(esr * present / value, "resistance")
+        keys["esr"] = format_quantity(rounded_up(esr * present / value, 3), "resistance")
     changed = with_part(plan, table, **keys)
     trial = trial.decided(
         changed, Decision(f"stage.{table}.capacitance", keys.pop("capacitance"), before, set_by, worst.at)

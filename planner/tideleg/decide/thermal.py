@@ -59,6 +59,7 @@ def _with_plate(
     registry: Registry | None,
     progress: Progress | None,
 ) -> Trial:
+    given = "" if trial.plan.cooling is None else str(trial.plan.cooling.settings.get("plate_resistance", ""))
     plan = with_part(trial.plan, "switch", in_parallel=chips)
     before = str(trial.plan.stage.parts.get("switch", {}).get("in_parallel", 1))
     resistance: float | None = None
@@ -67,9 +68,8 @@ def _with_plate(
         plan = with_cooling(plan, plate_resistance=resistance)
     at = _when(checks[0])
     trial = trial.decided(plan, Decision("stage.switch.in_parallel", chips, before, _words(checks[0]), at))
-    if resistance is not None and trial.plan.cooling is not None:
+    if resistance is not None:
         text = format_quantity(resistance, "thermal resistance")
-        given = str(trial.plan.cooling.settings.get("plate_resistance", ""))
         plan = with_cooling(plan, plate_resistance=text)
         trial = trial.decided(plan, Decision("cooling.plate_resistance", text, given, _words(checks[0]), at))
     return trial

@@ -30,6 +30,8 @@ def format_quantity(value: float, dimension: str) -> str:
     '120 uH'
     """
     known = DIMENSIONS[dimension]
+    if dimension == "thermal resistance" and abs(value) < 0.5:
+        return f"{1e3 * value:.12g} K/kW"
     units = [unit for unit, size in known.prefixed.items() if size == 1.0]
     if not units or value == 0.0:
         return f"{value:.12g} {known.base}"
