@@ -12,7 +12,7 @@ from tideleg import FloatArray, Flow, Line, LossTerm, PartKind, Timing, Values, 
 
 
 class BusbarSettings(BaseModel):
-    """Keys of [stage.busbar]: resistances there and back."""
+    """Keys of [stage.busbar]: resistances there and back, each on its own."""
 
     model_config = ConfigDict(extra="forbid")
 
@@ -21,18 +21,32 @@ class BusbarSettings(BaseModel):
 
 
 @dataclass(frozen=True)
-class BusbarTerm:
-    """R I² of both ports; the ripple stays in the capacitors."""
+class BatterySideTerm:
+    """R I² of the battery current. It lies outside of the leg, so it does not shift the duty ratio."""
 
-    battery_side: Values
-    link_side: Values
-    mechanism: str = "busbar"
+    resistance: Values
+    mechanism: str = "busbar battery side"
     ohmic: bool = False
     heats: bool = True
 
     def at(self, part: Flow, timing: Timing, temperature: FloatArray) -> Line:
-        """Return the loss of both busbars [W]."""
-        watts = self.battery_side * part.battery_current**2 + self.link_side * part.link_current**2
+        """Return the loss of the busbar [W]; the ripple stays in the capacitor."""
+        watts = self.resistance * part.battery_current * part.battery_current
+        return Line(watts, np.zeros_like(watts))
+
+
+@dataclass(frozen=True)
+class LinkSideTerm:
+    """R I² of the link current. It lies outside of the leg, so it does not shift the duty ratio."""
+
+    resistance: Values
+    mechanism: str = "busbar link side"
+    ohmic: bool = False
+    heats: bool = True
+
+    def at(self, part: Flow, timing: Timing, temperature: FloatArray) -> Line:
+        """Return the loss of the busbar [W]; the ripple stays in the capacitor."""
+        watts = self.resistance * part.link_current * part.link_current
         return Line(watts, np.zeros_like(watts))
 
 
@@ -43,13 +57,17 @@ class Busbar:
     name: str = "busbar"
     source: str = "R I², Joule's law"
     reads: PartKind = "busbar"
-    mechanisms: tuple[str, ...] = ("busbar",)
+    mechanisms: tuple[str, ...] = ("busbar battery side", "busbar link side")
     settings: type[BaseModel] = BusbarSettings
 
     def terms(self, settings: BusbarSettings) -> tuple[LossTerm[Flow], ...]:
-        """Return the term if a resistance is given."""
-        given = (settings.battery_side_resistance, settings.link_side_resistance)
-        return () if given == (None, None) else (BusbarTerm(given[0] or 0.0, given[1] or 0.0),)
+        """Return a term for each side whose resistance is given."""
+        found: list[LossTerm[Flow]] = []
+        if settings.battery_side_resistance is not None:
+            found.append(BatterySideTerm(settings.battery_side_resistance))
+        if settings.link_side_resistance is not None:
+            found.append(LinkSideTerm(settings.link_side_resistance))
+        return tuple(found)
 
 
 @hookimpl

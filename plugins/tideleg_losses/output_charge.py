@@ -9,15 +9,17 @@ import numpy as np
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
 from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, Values, hookimpl, quantity
+from tideleg_losses.edges import HeldInTurnOn
+from tideleg_losses.shared_keys import refuse_double_count, refuse_keys_without, refuse_missing
 
-LEAST_SWING_CURRENT = 1e-3
-"""Keeps the ramp from hard to soft finite where no dead time is given [A]: any negative current is then soft."""
+MECHANISM = "output charge"
 
 
 class OutputChargeSettings(BaseModel):
-    """Keys of [stage.switch]: output_charge of one chip at test_voltage, Q(V) = Q (V/V_test)^exponent.
+    """Keys of [stage.switch]: output_charge of ONE chip at test_voltage, Q(V) = Q (V/V_test)^exponent.
 
-    output_charge_in_turn_on says whether turn_on_energy already holds it; both together would count twice.
+    The exponent 0.5 is that of an abrupt junction. output_charge_in_turn_on says whether turn_on_energy already holds
+    the output charge; both together would count twice.
     """
 
     model_config = ConfigDict(extra="forbid")
@@ -30,48 +32,60 @@ class OutputChargeSettings(BaseModel):
 
     @model_validator(mode="after")
     def _counts_once(self) -> Self:
-        if self.output_charge is None:
-            return self
-        if self.test_voltage is None:
-            raise ValueError("test_voltage is missing: output_charge holds at a voltage; give it")
-        if self.turn_on_energy is not None and self.output_charge_in_turn_on is None:
-            raise ValueError(
-                "output_charge_in_turn_on is missing: turn_on_energy of a data sheet usually holds the output charge"
-                " already; say true (it is then not added) or false"
-            )
+        given = self.output_charge is not None
+        refuse_double_count(self, "output_charge_in_turn_on", given, "the output charge")
+        refuse_keys_without(self, ("output_charge",), ("output_charge_exponent",))
+        if given:
+            refuse_missing(self, ("test_voltage",), "output_charge holds at a voltage")
         return self
 
 
-def hard_share(current: FloatArray, swing_current: Values) -> FloatArray:
-    """Return how hard a turn-on is [-]: 1 at or above zero current, 0 where the current swings the charge in time.
+def charge_at(voltage: Values, charge: Values, test_voltage: Values, exponent: Values) -> FloatArray:
+    """Return Q (V/V_test)^exponent [C]; none at zero voltage or below."""
+    return np.asarray(charge * np.maximum(voltage / test_voltage, 0.0) ** exponent)
 
-    In between the node is swung part of the way: a straight line keeps the loss continuous (modelling choice).
+
+def stored_energy(charge: Values, voltage: Values, exponent: Values) -> Values:
+    """Return E_oss, the integral of v dQ: Q V p/(1 + p) with Q growing as V^p [J].
+
+    C V²/2 with the capacitance at one voltage is wrong by far, because the capacitance falls with voltage.
     """
-    return np.clip(1.0 + current / np.maximum(swing_current, LEAST_SWING_CURRENT), 0.0, 1.0)
+    return charge * voltage * exponent / (1.0 + exponent)
+
+
+def hard_share(current: FloatArray, dead_time: Values, charge: Values) -> FloatArray:
+    """Return how hard a turn-on is [-]: 1 at or above zero current, 0 where the current swings the node in time.
+
+    The node needs the charge of both positions, 2 Q, within the dead time: zero or negative current alone is not
+    enough. Between the two a straight line in the charge moved, |i| t_d/(2 Q), keeps the loss continuous (modelling
+    choice). Without a dead time nothing can swing, and every turn-on is hard.
+    """
+    both = 2.0 * np.asarray(charge)
+    moved = current * dead_time / np.where(both > 0.0, both, 1.0)
+    return np.clip(1.0 + moved, 0.0, 1.0)
 
 
 @dataclass(frozen=True)
 class OutputChargeTerm:
     """Q(V) V at each hard turn-on, times the frequency: its own energy and what charging the opposite position costs.
 
-    Total Q_oss V a cycle for a hard-switched leg. The swing needs the charge of both positions within the dead time.
+    The link gives Q V to charge the opposite position, which keeps E_oss of it; the rest, and the E_oss of this one,
+    heat this channel: Q V in all for two alike positions (charge balance).
     """
 
     charge: Values
     exponent: Values
     test_voltage: Values
-    counted: bool
-    mechanism: str = "output charge"
+    mechanism: str = MECHANISM
     ohmic: bool = False
     heats: bool = True
 
     def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of one chip [W]; it does not depend on temperature."""
-        voltage = np.maximum(np.asarray(part.turn_on_voltage), 0.0)
-        charge = self.charge * (voltage / self.test_voltage) ** self.exponent
-        swing = 2.0 * charge / np.maximum(np.asarray(timing.dead_time, dtype=np.float64), 1e-12)
-        share = hard_share(part.turn_on_current(), np.where(np.asarray(timing.dead_time) > 0.0, swing, 0.0))
-        watts = charge * voltage * share * timing.frequency * part.has_edges() * part.driven * float(self.counted)
+        voltage = part.turn_on_voltage
+        charge = charge_at(voltage, self.charge, self.test_voltage, self.exponent)
+        share = hard_share(part.turn_on_current(), timing.dead_time, charge)
+        watts = charge * voltage * share * timing.frequency * part.has_edges() * part.driven
         watts = watts + np.zeros_like(temperature)
         return Line(watts, np.zeros_like(watts))
 
@@ -83,17 +97,17 @@ class OutputCharge:
     name: str = "output-charge"
     source: str = "Q_oss V a hard turn-on: charge balance of two positions; ramp to soft: modelling choice, no source"
     reads: PartKind = "switch"
-    mechanisms: tuple[str, ...] = ("output charge",)
+    mechanisms: tuple[str, ...] = (MECHANISM,)
     settings: type[BaseModel] = OutputChargeSettings
 
     def terms(self, settings: OutputChargeSettings) -> tuple[LossTerm[Position], ...]:
-        """Return the term if an output charge is given."""
-        if settings.output_charge is None or settings.test_voltage is None:
+        """Return the term if an output charge is given; one that adds nothing where turn_on_energy holds it."""
+        s = settings
+        if s.output_charge_in_turn_on:
+            return (HeldInTurnOn(MECHANISM),)
+        if s.output_charge is None or s.test_voltage is None:
             return ()
-        counted = not settings.output_charge_in_turn_on
-        return (
-            OutputChargeTerm(settings.output_charge, settings.output_charge_exponent, settings.test_voltage, counted),
-        )
+        return (OutputChargeTerm(s.output_charge, s.output_charge_exponent, s.test_voltage),)
 
 
 @hookimpl

@@ -5,18 +5,21 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Annotated, Self
 
-import numpy as np
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
 from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, Values, hookimpl, quantity
-from tideleg_losses.edges import diode_current_at_end, scaled_energy
+from tideleg_losses.edges import EnergyLaw, HeldInTurnOn, diode_current_at_end, refuse_vanishing_slope
+from tideleg_losses.shared_keys import refuse_double_count, refuse_keys_without, refuse_missing
+
+MECHANISM = "recovery"
 
 
 class RecoverySettings(BaseModel):
-    """Keys of [stage.switch].
+    """Keys of [stage.switch], of ONE chip.
 
-    recovery_energy is what the diode itself loses at the test point; or recovery_charge, of which the diode keeps
-    Q V/4. recovery_in_turn_on says whether turn_on_energy already holds the recovery; both together would count twice.
+    recovery_energy is what the diode itself loses at the test point; or recovery_charge, of which it keeps Q V/4.
+    What recovery costs the opposite position belongs to turn_on_energy. recovery_in_turn_on says whether that holds
+    the diode's part as well; both together would count twice. Exponents 0.6 are typical (from memory).
     """
 
     model_config = ConfigDict(extra="forbid")
@@ -34,18 +37,16 @@ class RecoverySettings(BaseModel):
 
     @model_validator(mode="after")
     def _counts_once(self) -> Self:
-        if self.recovery_energy is None and self.recovery_charge is None:
-            return self
-        if self.recovery_energy is not None and self.recovery_charge is not None:
-            raise ValueError("give recovery_energy or recovery_charge, not both")
-        for key in ("test_current", "test_voltage"):
-            if getattr(self, key) is None:
-                raise ValueError(f"{key} is missing: recovery holds at a test point; give it")
-        if self.turn_on_energy is not None and self.recovery_in_turn_on is None:
-            raise ValueError(
-                "recovery_in_turn_on is missing: turn_on_energy of a data sheet usually holds the opposite diode's"
-                " recovery already; say true (recovery is then not added) or false"
-            )
+        data = ("recovery_energy", "recovery_charge")
+        given = [key for key in data if getattr(self, key) is not None]
+        refuse_double_count(self, "recovery_in_turn_on", bool(given), "the opposite diode's recovery")
+        shape = ("recovery_current_exponent", "recovery_voltage_exponent", "recovery_energy_slope")
+        refuse_keys_without(self, data, shape)
+        if len(given) > 1:
+            raise ValueError("found recovery_energy and recovery_charge; give one of them")
+        if given:
+            refuse_missing(self, ("test_current", "test_voltage"), f"{given[0]} holds at a test point")
+        refuse_vanishing_slope("recovery_energy_slope", self.recovery_energy_slope, self.test_temperature)
         return self
 
 
@@ -62,23 +63,14 @@ def energy_kept_by_diode(charge: Values, voltage: Values) -> Values:
 class RecoveryTerm:
     """Recovery energy at each run that ends with negative current, times the frequency."""
 
-    energy: Values
-    settings: RecoverySettings
-    mechanism: str = "recovery"
+    law: EnergyLaw
+    mechanism: str = MECHANISM
     ohmic: bool = False
     heats: bool = True
 
     def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of one chip [W] and its slope [W/K]."""
-        s = self.settings
-        assert s.test_current is not None
-        assert s.test_voltage is not None
-        exponents = (s.recovery_current_exponent, s.recovery_voltage_exponent)
-        test_point = (s.test_current, s.test_voltage)
-        energy = scaled_energy(self.energy, diode_current_at_end(part), part.blocks, *test_point, *exponents)
-        watts = energy * timing.frequency
-        factor = 1.0 + s.recovery_energy_slope * (temperature - s.test_temperature)
-        return Line(watts * np.maximum(factor, 0.0), watts * np.where(factor > 0.0, s.recovery_energy_slope, 0.0))
+        return self.law.line(diode_current_at_end(part), part.blocks, timing.frequency, temperature)
 
 
 @dataclass(frozen=True)
@@ -90,17 +82,24 @@ class Recovery:
         "E_rr scaled as switching energies, exponents 0.6: Semikron, Application Manual, 2nd ed., 2015 (from memory)"
     )
     reads: PartKind = "switch"
-    mechanisms: tuple[str, ...] = ("recovery",)
+    mechanisms: tuple[str, ...] = (MECHANISM,)
     settings: type[BaseModel] = RecoverySettings
 
     def terms(self, settings: RecoverySettings) -> tuple[LossTerm[Position], ...]:
-        """Return the term if recovery data are given; zero energy where turn_on_energy already holds it."""
-        energy: Values | None = settings.recovery_energy
-        if settings.recovery_charge is not None and settings.test_voltage is not None:
-            energy = energy_kept_by_diode(settings.recovery_charge, settings.test_voltage)
+        """Return the term if recovery data are given; one that adds nothing where turn_on_energy holds it."""
+        s = settings
+        if s.recovery_in_turn_on:
+            return (HeldInTurnOn(MECHANISM),)
+        if s.test_current is None or s.test_voltage is None:
+            return ()
+        energy: Values | None = s.recovery_energy
+        if s.recovery_charge is not None:
+            energy = energy_kept_by_diode(s.recovery_charge, s.test_voltage)
         if energy is None:
             return ()
-        return (RecoveryTerm(0.0 if settings.recovery_in_turn_on else energy, settings),)
+        exponents = s.recovery_current_exponent, s.recovery_voltage_exponent
+        point = s.test_current, s.test_voltage, s.test_temperature
+        return (RecoveryTerm(EnergyLaw(energy, *point, *exponents, s.recovery_energy_slope)),)
 
 
 @hookimpl

@@ -1,4 +1,4 @@
-"""Power of the control, always and while switching."""
+"""Power of the control: always, and on top while switching."""
 
 from __future__ import annotations
 
@@ -12,7 +12,7 @@ from tideleg import FloatArray, Flow, Line, LossTerm, PartKind, Timing, Values, 
 
 
 class StandbySettings(BaseModel):
-    """Keys of [stage.control]; both are drawn from the battery."""
+    """Keys of [stage.control], each on its own: standby_power always, switching_power only while the stage switches."""
 
     model_config = ConfigDict(extra="forbid")
 
@@ -22,17 +22,31 @@ class StandbySettings(BaseModel):
 
 @dataclass(frozen=True)
 class StandbyTerm:
-    """Standby power always, and the rest only while the stage switches."""
+    """Power that the control always draws."""
 
-    always: Values
-    switching: Values
+    power: Values
     mechanism: str = "standby"
     ohmic: bool = False
     heats: bool = True
 
     def at(self, part: Flow, timing: Timing, temperature: FloatArray) -> Line:
         """Return the power of the control [W]."""
-        watts = self.always + self.switching * part.active
+        watts = self.power + np.zeros_like(temperature)
+        return Line(watts, np.zeros_like(watts))
+
+
+@dataclass(frozen=True)
+class SwitchingPowerTerm:
+    """Power that the control draws on top while the stage switches."""
+
+    power: Values
+    mechanism: str = "control while switching"
+    ohmic: bool = False
+    heats: bool = True
+
+    def at(self, part: Flow, timing: Timing, temperature: FloatArray) -> Line:
+        """Return the power of the control [W]."""
+        watts = self.power * part.active + np.zeros_like(temperature)
         return Line(watts, np.zeros_like(watts))
 
 
@@ -43,16 +57,20 @@ class Standby:
     name: str = "standby"
     source: str = "as given by the plan"
     reads: PartKind = "control"
-    mechanisms: tuple[str, ...] = ("standby",)
+    mechanisms: tuple[str, ...] = ("standby", "control while switching")
     settings: type[BaseModel] = StandbySettings
 
     def terms(self, settings: StandbySettings) -> tuple[LossTerm[Flow], ...]:
-        """Return the term if a power is given."""
-        given = (settings.standby_power, settings.switching_power)
-        return () if given == (None, None) else (StandbyTerm(given[0] or 0.0, given[1] or 0.0),)
+        """Return a term for each power given."""
+        found: list[LossTerm[Flow]] = []
+        if settings.standby_power is not None:
+            found.append(StandbyTerm(settings.standby_power))
+        if settings.switching_power is not None:
+            found.append(SwitchingPowerTerm(settings.switching_power))
+        return tuple(found)
 
 
 @hookimpl
 def loss_model() -> Standby:
-    """Offer the standby power."""
+    """Offer the power of the control."""
     return Standby()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import io
+import warnings
 from pathlib import Path
 from typing import TYPE_CHECKING, Literal
 
@@ -149,8 +150,10 @@ def _table(path: Path) -> tuple[pd.DataFrame, str]:
     _refuse_bad_header(path, header, columns)
     try:
         rows = io.StringIO(text)
-        table = pd.read_csv(rows, names=columns, header=0, dtype=str, keep_default_na=False, index_col=False)
-    except pd.errors.ParserError as error:
+        with warnings.catch_warnings():
+            warnings.simplefilter("error", pd.errors.ParserWarning)  # it would drop the cells beyond the header
+            table = pd.read_csv(rows, names=columns, header=0, dtype=str, keep_default_na=False, index_col=False)
+    except (pd.errors.ParserError, pd.errors.ParserWarning) as error:
         raise ProfileError(f"the rows do not fit the header: {error}", file=path) from None
     if table.empty:
         raise ProfileError("the file holds a header and no rows", file=path)
@@ -190,7 +193,8 @@ def _numbers(path: Path, table: pd.DataFrame, column: str) -> FloatArray:
     bad = ~np.isfinite(values)
     if np.any(bad):
         row = int(np.argmax(bad))
-        cell = table[column].iloc[row].strip()
+        given = table[column].iloc[row]
+        cell = given.strip() if isinstance(given, str) else ""
         what = "the value is missing" if not cell else f"found {cell!r}, which is no finite number"
         raise ProfileError(
             f"{what}. Fill it or drop the row; nothing is guessed", file=path, line=_line(path, row), column=column
