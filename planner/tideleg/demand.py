@@ -7,7 +7,6 @@ from pathlib import Path
 import numpy as np
 
 from tideleg.battery import Battery
-from tideleg.errors import PlanError
 from tideleg.march import Demand
 from tideleg.mission import Profile, Vehicle, read_profile
 from tideleg.plan import Curve, MissionTable, Plan
@@ -106,12 +105,8 @@ def demand_of(plan: Plan, index: int, profile: Profile, stage: Stage) -> Demand:
     names = () if stage.modes is None else stage.modes.boundaries
     for name in names:
         if given.get(name) is None:
-            raise PlanError(
-                f"the cooling needs the {name} temperature; give it here, such as {name} = '25 degC',"
-                f" or as the column {name}_degc of the profile",
-                file=plan.file,
-                key=f"mission.{index}.{name}",
-            )
+            what = f"the cooling needs the {name} temperature; give {name} = '25 degC' or a column {name}_degc"
+            raise plan.fault(f"mission.{index}.{name}", what)
     held = given["coolant"] if given["coolant"] is not None else np.full(steps, REFERENCE_DEGC)
     wanted = [column for column in (given[name] for name in names) if column is not None]
     boundary = np.stack(wanted) if wanted else np.zeros((0, steps))

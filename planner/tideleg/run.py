@@ -80,8 +80,17 @@ def run(plan: Plan | str | Path, *, registry: Registry | None = None, progress: 
         plan = load_plan(plan)
     stage = build_stage(plan, registry)
     battery = battery_of(plan)
+    _refuse_twin_missions(plan)
     runs = [_run_mission(plan, index, stage, battery, progress) for index in range(len(plan.mission))]
     return _outcome(plan, stage, battery, {r.result.name: r for r in runs})
+
+
+def _refuse_twin_missions(plan: Plan) -> None:
+    names = [mission.name or Path(mission.profile).stem for mission in plan.mission]
+    for index, name in enumerate(names):
+        if name in names[:index]:
+            what = f"two missions are named {name!r}; give one of them a name of its own, such as name = 'winter'"
+            raise plan.fault(f"mission.{index}.name", what)
 
 
 def _run_mission(plan: Plan, index: int, stage: Stage, battery: Battery, progress: Progress | None) -> MissionRun:

@@ -10,7 +10,7 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from tideleg.contract import CooledPart, CoolingModel, Flow, LossModel, LossTerm, Operation, Point, Slot, Topology
-from tideleg.errors import InputError, PlanError
+from tideleg.errors import InputError
 from tideleg.heat import Modes, modes
 from tideleg.plan import CapacitorBase, InductorBase, Plan, SwitchBase, read_table
 from tideleg.registry import Registry, call_plugin, installed
@@ -244,20 +244,14 @@ def _refuse_unknown_names(plan: Plan, registry: Registry, slots: tuple[Slot, ...
     tables = {slot.table for slot in slots}
     for name in plan.stage.parts:
         if name not in tables:
-            raise PlanError(
-                f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have;"
-                f" its tables are {', '.join(sorted(tables))}",
-                file=plan.file,
-                key=f"stage.{name}",
-            )
-    known = {m.name for m in registry.loss_models()}
+            known = ", ".join(sorted(tables))
+            what = f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have; it has {known}"
+            raise plan.fault(f"stage.{name}", what)
+    models = {m.name for m in registry.loss_models()}
     for name in plan.losses.leave_out:
-        if name not in known:
-            raise PlanError(
-                f"found {name!r}; the installed loss plugins are {', '.join(sorted(known))}",
-                file=plan.file,
-                key="losses.leave_out",
-            )
+        if name not in models:
+            what = f"found {name!r}; the installed loss plugins are {', '.join(sorted(models))}"
+            raise plan.fault("losses.leave_out", what)
 
 
 def _refuse_twin_terms(slot: Slot, terms: list[BoundTerm]) -> None:

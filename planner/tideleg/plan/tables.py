@@ -8,7 +8,9 @@ from typing import Annotated, Any, Literal, Self
 from pydantic import BaseModel, ConfigDict, Field, PrivateAttr, model_validator
 
 from tideleg import quantity as q
+from tideleg.errors import PlanError
 from tideleg.plan.curve import Curve
+from tideleg.plan.lines import line_of
 
 Positive = Field(gt=0.0)
 NotNegative = Field(ge=0.0)
@@ -228,6 +230,10 @@ class Plan(Table):
     def text(self) -> str:
         """The text of the plan file, for error lines; empty for a plan made in Python."""
         return self._text
+
+    def fault(self, key: str, what: str) -> PlanError:
+        """Return the error that says `what` about one dotted key, with the file and the line where it stands."""
+        return PlanError(what, file=self._file, key=key, line=line_of(self._text, key) if self._text else None)
 
     @property
     def extra_files(self) -> tuple[Path, ...]:

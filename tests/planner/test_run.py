@@ -1,0 +1,215 @@
+"""The main job on shipped scenarios and on bare plans: books, columns, limits, and an honest list of what is missing."""
+
+import json
+import shutil
+from pathlib import Path
+
+import numpy as np
+import pytest
+from tideleg import InputError
+from tideleg.plan import load_plan, plan_from_mapping
+from tideleg.run import run
+
+SCENARIOS = Path(__file__).parents[2] / "profiles"
+COLUMNS = (
+    "time_s duration_s power_requested_w power_w curtailed_w curtailed_cause direction conduction soc battery_voltage_v"
+    " battery_current_a link_voltage_v link_current_a duty_ratio loss_w inductor.current_mean_a inductor.current_rms_a"
+    " inductor.current_ripple_a inductor.current_peak_a inductor.current_valley_a upper_switch.current_rms_a"
+    " upper_switch.current_mean_a upper_switch.turn_on_current_a upper_switch.turn_off_current_a upper_switch.loss_w"
+    " upper_switch.temperature_degc lower_switch.loss_w battery_capacitor.current_rms_a"
+    " battery_capacitor.voltage_ripple_v link_capacitor.current_rms_a link_capacitor.voltage_ripple_v"
+).split()
+
+
+@pytest.fixture(scope="module")
+def outcomes():
+    return {name: run(SCENARIOS / name / "plan.toml") for name in ("kerbside", "orchard", "commuter")}
+
+
+@pytest.mark.parametrize("name", ["kerbside", "orchard", "commuter"])
+def test_the_books_of_every_scenario_close_below_a_billionth(outcomes, name):
+    for mission in outcomes[name].missions:
+        assert mission.energy.residual < 1e-9
+        assert mission.energy.recomputed_residual < 1e-9
+        assert mission.energy.curtailed_j == 0.0
+    assert outcomes[name].holds, outcomes[name].verdict
+
+
+def test_the_table_of_steps_has_its_columns_and_is_finite(outcomes):
+    steps = outcomes["kerbside"].steps
+    assert set(COLUMNS) <= set(steps.columns)
+    assert list(steps.columns[:3]) == COLUMNS[:3]
+    numbers = steps.select_dtypes("number").to_numpy()
+    assert np.isfinite(numbers).all()
+    assert set(steps["direction"]) == {"charge", "discharge"}
+
+
+def test_columns_agree_with_each_other(outcomes):
+    steps = outcomes["kerbside"].steps
+    np.testing.assert_allclose(steps["inductor.current_mean_a"] * 4, steps["battery_current_a"], rtol=1e-9, atol=1e-9)
+    np.testing.assert_allclose(steps["link_current_a"] * steps["link_voltage_v"], steps["power_w"], rtol=1e-12, atol=1e-6)
+    ripple = steps["inductor.current_peak_a"] - steps["inductor.current_valley_a"]
+    np.testing.assert_allclose(steps["inductor.current_ripple_a"], ripple, rtol=1e-9, atol=1e-9)
+    both = steps["upper_switch.current_rms_a"] ** 2 + steps["lower_switch.current_rms_a"] ** 2
+    np.testing.assert_allclose(4 * both, steps["inductor.current_rms_a"] ** 2, rtol=1e-9)  # two chips share a position
+
+
+def test_losses_by_part_and_mechanism_sum_to_the_total(outcomes):
+    for outcome in outcomes.values():
+        for mission in outcome.missions:
+            assert sum(e.total_j for e in mission.losses) == pytest.approx(mission.energy.loss_j, rel=1e-9)
+    mechanisms = {e.mechanism for e in outcomes["kerbside"].missions[0].losses}
+    assert len(mechanisms) >= 12
+
+
+def test_a_limit_names_value_part_and_an_instant_that_holds_that_value(outcomes):
+    outcome = outcomes["kerbside"]
+    check = next(c for c in outcome.limits if c.name == "junction temperature" and c.part == "lower_switch")
+    steps = outcome.missions[0].steps
+    row = steps.index[steps["time_s"] == check.time_s][0]
+    assert steps.loc[row, "lower_switch.temperature_degc"] == check.value == steps["lower_switch.temperature_degc"].max()
+    assert check.margin == check.limit - check.value
+    assert check.used == pytest.approx((check.value - 65.0) / (150.0 - 65.0))
+
+
+def test_the_periodic_start_repeats(outcomes):
+    steps = outcomes["orchard"].missions[0].steps
+    # the plate's slowest mode is minutes, the day is long: the last step of the day meets the first again
+    assert steps["inductor.temperature_mean_degc"].iloc[0] == pytest.approx(
+        steps["inductor.temperature_degc"].iloc[-1], abs=1.5
+    )
+
+
+def test_the_summary_is_plain_json(outcomes):
+    for outcome in outcomes.values():
+        summary = json.loads(json.dumps(outcome.summary(), allow_nan=False))
+        for key in "schema_version title verdict limits energy worst thermal wear battery safety not_modelled".split():
+            assert key in summary
+        assert len(summary["inputs"]["sha256"]) >= 2
+        assert summary["safety"]["sentences"]
+
+
+IDEAL = {
+    "title": "ideal",
+    "battery": {"open_circuit_voltage": "400 V"},
+    "link": {"voltage": "800 V"},
+    "stage": {
+        "topology": "half-bridge",
+        "switching_frequency": "20 kHz",
+        "inductor": {"inductance": "500 uH"},
+    },
+    "mission": [{"profile": "p.csv"}],
+}
+
+
+def ideal(folder, rows, **changes):
+    (folder / "p.csv").write_text(rows)
+    return run(plan_from_mapping({**IDEAL, **changes}, folder=folder))
+
+
+def test_ideal_parts_give_exact_lossless_currents_and_everything_is_listed_as_not_modelled(tmp_path):
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,-40000\n2,0\n3,0\n")
+    steps = outcome.steps
+    # Closed form: I = P/V_battery, ripple V D (1 - D)/(L f) with D = 1/2: 800/(4 500e-6 20e3) = 20 A.
+    np.testing.assert_allclose(steps["battery_current_a"], [100.0, -100.0, 0.0], atol=1e-12)
+    np.testing.assert_allclose(steps["inductor.current_ripple_a"], 20.0, rtol=1e-12)
+    np.testing.assert_allclose(steps["inductor.current_rms_a"] ** 2, [10000 + 400 / 12] * 2 + [400 / 12], rtol=1e-12)
+    np.testing.assert_allclose(steps["link_capacitor.current_rms_a"] ** 2, [2500 + 400 / 24] * 2 + [400 / 24], rtol=1e-12)
+    assert (steps["loss_w"] == 0.0).all()
+    assert "soc" not in steps
+    missing = " ".join(outcome.not_modelled)
+    for word in ("channel conduction", "turn-on", "core", "winding dc", "capacitor ESR", "gate", "temperature of switch"):
+        assert word in missing
+    assert outcome.efficiency == 1.0
+    assert outcome.missions[0].energy.residual == 0.0
+
+
+@pytest.mark.parametrize(
+    "rows",
+    [
+        "time_s,duration_s,power_w\n0,3600,20000\n",
+        "time_s,power_w\n0,0\n3600,0\n",
+        "time_s,power_w\n0,-5000\n28800,-1\n28801,0\n",
+        "time_s,power_kw\n0,-160\n0.5,160\n1,0\n",
+    ],
+)
+def test_one_row_idle_charge_only_and_steep_profiles_run(tmp_path, rows):
+    outcome = ideal(tmp_path, rows)
+    assert outcome.holds
+    assert max(outcome.missions[0].energy.residual, outcome.missions[0].energy.recomputed_residual) < 1e-12
+
+
+def test_two_missions_stand_in_one_frame_and_both_are_counted(tmp_path):
+    (tmp_path / "q.csv").write_text("time_s,power_w\n0,10000\n5,0\n")
+    missions = [{"profile": "p.csv", "passes_per_year": 10}, {"profile": "q.csv", "name": "short", "passes_per_year": 3}]
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", mission=missions)
+    assert outcome.steps["mission"].tolist() == ["p", "short"]
+    assert {c.mission for c in outcome.limits} == {"p", "short"}
+
+
+def test_missions_of_one_name_are_refused(tmp_path):
+    missions = [{"profile": "p.csv"}, {"profile": "p.csv"}]
+    with pytest.raises(InputError, match="two missions are named 'p'"):
+        ideal(tmp_path, "time_s,power_w\n0,1\n1,0\n", mission=missions)
+
+
+def test_a_limit_that_nothing_can_be_held_against_leaves_the_answer_unproven(tmp_path):
+    outcome = ideal(tmp_path, "time_s,power_w\n0,1\n1,0\n", limits={"junction_temperature": "150 degC"})
+    assert not outcome.holds
+    assert "not proven" in outcome.verdict
+    assert any("junction temperature" in line for line in outcome.not_modelled)
+
+
+def test_curtailment_fails_a_mission_unless_it_is_allowed(tmp_path):
+    battery = {"open_circuit_voltage": "400 V", "current_limit_discharge": "50 A"}
+    rows = "time_s,power_w\n0,40000\n1,0\n"
+    outcome = ideal(tmp_path, rows, battery=battery)
+    assert not outcome.holds
+    assert outcome.binding.name == "curtailed energy"
+    assert outcome.steps["power_w"].tolist() == [20000.0]
+    assert outcome.steps["curtailed_cause"].tolist() == ["discharge current limit"]
+    assert ideal(tmp_path, rows, battery=battery, limits={"curtailed_energy": "60 %"}).holds
+
+
+@pytest.mark.parametrize(
+    ("changes", "said"),
+    [
+        ({"link": {"voltage": "390 V"}}, r"0 s: topology 'half-bridge' cannot operate: the battery voltage is not below"),
+        ({"battery": {"open_circuit_voltage": "795 V", "resistance": "0.2 ohm"}}, "cannot operate"),
+        ({"stage": {**IDEAL["stage"], "topology": "quarter-bridge"}}, "no topology plugin named 'quarter-bridge'"),
+        ({"limits": {"junction_temperature": "10 degC"}}, None),
+    ],
+)
+def test_what_cannot_be_is_said_with_its_instant(tmp_path, changes, said):
+    rows = "time_s,power_w\n0,-40000\n1,0\n"
+    if said is None:
+        assert not ideal(tmp_path, rows, **changes).holds
+        return
+    with pytest.raises(InputError, match=said):
+        ideal(tmp_path, rows, **changes)
+
+
+def test_a_missing_coolant_is_asked_for(tmp_path):
+    shutil.copytree(SCENARIOS / "commuter", tmp_path / "c")
+    path = tmp_path / "c" / "plan.toml"
+    path.write_text(path.read_text().replace('coolant = "55 degC"\n', ""))
+    with pytest.raises(InputError, match="mission.0.coolant: the cooling needs the coolant temperature"):
+        run(path)
+
+
+def test_generated_profiles_are_what_their_scripts_write(tmp_path):
+    import runpy
+
+    for name in ("kerbside", "orchard"):
+        script = tmp_path / name / "generate.py"
+        shutil.copytree(SCENARIOS / name, script.parent)
+        (script.parent / f"{name}.csv").unlink()
+        runpy.run_path(str(script), run_name="__main__")
+        assert (script.parent / f"{name}.csv").read_bytes() == (SCENARIOS / name / f"{name}.csv").read_bytes()
+        assert (script.parent / f"{name}.csv").stat().st_size < 1_000_000
+
+
+def test_kerbside_is_what_its_plan_says():
+    outcome = load_plan(SCENARIOS / "kerbside" / "plan.toml")
+    assert (outcome.battery.open_circuit_voltage.value[0], outcome.battery.open_circuit_voltage.value[-1]) == (324, 453)
+    assert outcome.stage.settings["legs"] == 4
