@@ -1,7 +1,14 @@
 """tideleg plans, sizes and defends bidirectional DC-DC stages over whole missions.
 
-The names below are the public face: what a plan runner, a notebook or a stranger's plugin may import.
+The names below are the public face: what a plan runner, a notebook or a stranger's plugin may import. The main jobs
+(`load_plan`, `plan_from_mapping`, `run`, `size`, `compare`, `read_profile`, `passport`) are loaded when first asked
+for, so that importing tideleg stays quick and loads no plugin, no pandas and no matplotlib.
 """
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
 
 from tideleg import quantity
 from tideleg.contract import (
@@ -31,6 +38,37 @@ from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginErro
 from tideleg.network import Mass, Network, Path, Seat
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
+if TYPE_CHECKING:
+    from tideleg.decide.compare import compare
+    from tideleg.decide.size import size
+    from tideleg.mission import passport, read_profile
+    from tideleg.outcome import Outcome
+    from tideleg.plan import Plan, load_plan, plan_from_mapping
+    from tideleg.report import write_results
+    from tideleg.running import run
+
+_ON_DEMAND = {
+    "Outcome": "tideleg.outcome",
+    "Plan": "tideleg.plan",
+    "compare": "tideleg.decide.compare",
+    "load_plan": "tideleg.plan",
+    "passport": "tideleg.mission",
+    "plan_from_mapping": "tideleg.plan",
+    "read_profile": "tideleg.mission",
+    "run": "tideleg.running",
+    "size": "tideleg.decide.size",
+    "write_results": "tideleg.report",
+}
+"""Public names that are loaded when first asked for -> where they live."""
+
+
+def __getattr__(name: str) -> Any:
+    """Load a main job when it is first asked for."""
+    if name not in _ON_DEMAND:
+        raise AttributeError(f"module 'tideleg' has no attribute {name!r}")
+    return getattr(import_module(_ON_DEMAND[name]), name)
+
+
 __all__ = [
     "BOUNDARY",
     "CONDUCTION",
@@ -50,8 +88,10 @@ __all__ = [
     "Network",
     "NoEquilibriumError",
     "Operation",
+    "Outcome",
     "PartKind",
     "Path",
+    "Plan",
     "PlanError",
     "PluginError",
     "Point",
@@ -66,8 +106,16 @@ __all__ = [
     "Values",
     "Waveform",
     "Winding",
+    "compare",
     "hookimpl",
+    "load_plan",
+    "passport",
+    "plan_from_mapping",
     "quantity",
+    "read_profile",
+    "run",
+    "size",
+    "write_results",
 ]
 
 __version__ = "0.1.0"

@@ -6,19 +6,45 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+
 from tideleg import InputError
 from tideleg.plan import load_plan, plan_from_mapping
-from tideleg.run import run
+from tideleg.running import run
 
 SCENARIOS = Path(__file__).parents[2] / "profiles"
-COLUMNS = (
-    "time_s duration_s power_requested_w power_w curtailed_w curtailed_cause direction conduction soc battery_voltage_v"
-    " battery_current_a link_voltage_v link_current_a duty_ratio loss_w inductor.current_mean_a inductor.current_rms_a"
-    " inductor.current_ripple_a inductor.current_peak_a inductor.current_valley_a upper_switch.current_rms_a"
-    " upper_switch.current_mean_a upper_switch.turn_on_current_a upper_switch.turn_off_current_a upper_switch.loss_w"
-    " upper_switch.temperature_degc lower_switch.loss_w battery_capacitor.current_rms_a"
-    " battery_capacitor.voltage_ripple_v link_capacitor.current_rms_a link_capacitor.voltage_ripple_v"
-).split()
+COLUMNS = [
+    "time_s",
+    "duration_s",
+    "power_requested_w",
+    "power_w",
+    "curtailed_w",
+    "curtailed_cause",
+    "direction",
+    "conduction",
+    "soc",
+    "battery_voltage_v",
+    "battery_current_a",
+    "link_voltage_v",
+    "link_current_a",
+    "duty_ratio",
+    "loss_w",
+    "inductor.current_mean_a",
+    "inductor.current_rms_a",
+    "inductor.current_ripple_a",
+    "inductor.current_peak_a",
+    "inductor.current_valley_a",
+    "upper_switch.current_rms_a",
+    "upper_switch.current_mean_a",
+    "upper_switch.turn_on_current_a",
+    "upper_switch.turn_off_current_a",
+    "upper_switch.loss_w",
+    "upper_switch.temperature_degc",
+    "lower_switch.loss_w",
+    "battery_capacitor.current_rms_a",
+    "battery_capacitor.voltage_ripple_v",
+    "link_capacitor.current_rms_a",
+    "link_capacitor.voltage_ripple_v",
+]
 
 
 @pytest.fixture(scope="module")
@@ -47,7 +73,9 @@ def test_the_table_of_steps_has_its_columns_and_is_finite(outcomes):
 def test_columns_agree_with_each_other(outcomes):
     steps = outcomes["kerbside"].steps
     np.testing.assert_allclose(steps["inductor.current_mean_a"] * 4, steps["battery_current_a"], rtol=1e-9, atol=1e-9)
-    np.testing.assert_allclose(steps["link_current_a"] * steps["link_voltage_v"], steps["power_w"], rtol=1e-12, atol=1e-6)
+    np.testing.assert_allclose(
+        steps["link_current_a"] * steps["link_voltage_v"], steps["power_w"], rtol=1e-12, atol=1e-6
+    )
     ripple = steps["inductor.current_peak_a"] - steps["inductor.current_valley_a"]
     np.testing.assert_allclose(steps["inductor.current_ripple_a"], ripple, rtol=1e-9, atol=1e-9)
     both = steps["upper_switch.current_rms_a"] ** 2 + steps["lower_switch.current_rms_a"] ** 2
@@ -67,7 +95,9 @@ def test_a_limit_names_value_part_and_an_instant_that_holds_that_value(outcomes)
     check = next(c for c in outcome.limits if c.name == "junction temperature" and c.part == "lower_switch")
     steps = outcome.missions[0].steps
     row = steps.index[steps["time_s"] == check.time_s][0]
-    assert steps.loc[row, "lower_switch.temperature_degc"] == check.value == steps["lower_switch.temperature_degc"].max()
+    assert (
+        steps.loc[row, "lower_switch.temperature_degc"] == check.value == steps["lower_switch.temperature_degc"].max()
+    )
     assert check.margin == check.limit - check.value
     assert check.used == pytest.approx((check.value - 65.0) / (150.0 - 65.0))
 
@@ -83,7 +113,19 @@ def test_the_periodic_start_repeats(outcomes):
 def test_the_summary_is_plain_json(outcomes):
     for outcome in outcomes.values():
         summary = json.loads(json.dumps(outcome.summary(), allow_nan=False))
-        for key in "schema_version title verdict limits energy worst thermal wear battery safety not_modelled".split():
+        for key in [
+            "schema_version",
+            "title",
+            "verdict",
+            "limits",
+            "energy",
+            "worst",
+            "thermal",
+            "wear",
+            "battery",
+            "safety",
+            "not_modelled",
+        ]:
             assert key in summary
         assert len(summary["inputs"]["sha256"]) >= 2
         assert summary["safety"]["sentences"]
@@ -114,11 +156,21 @@ def test_ideal_parts_give_exact_lossless_currents_and_everything_is_listed_as_no
     np.testing.assert_allclose(steps["battery_current_a"], [100.0, -100.0, 0.0], atol=1e-12)
     np.testing.assert_allclose(steps["inductor.current_ripple_a"], 20.0, rtol=1e-12)
     np.testing.assert_allclose(steps["inductor.current_rms_a"] ** 2, [10000 + 400 / 12] * 2 + [400 / 12], rtol=1e-12)
-    np.testing.assert_allclose(steps["link_capacitor.current_rms_a"] ** 2, [2500 + 400 / 24] * 2 + [400 / 24], rtol=1e-12)
+    np.testing.assert_allclose(
+        steps["link_capacitor.current_rms_a"] ** 2, [2500 + 400 / 24] * 2 + [400 / 24], rtol=1e-12
+    )
     assert (steps["loss_w"] == 0.0).all()
     assert "soc" not in steps
     missing = " ".join(outcome.not_modelled)
-    for word in ("channel conduction", "turn-on", "core", "winding dc", "capacitor ESR", "gate", "temperature of switch"):
+    for word in (
+        "channel conduction",
+        "turn-on",
+        "core",
+        "winding dc",
+        "capacitor ESR",
+        "gate",
+        "temperature of switch",
+    ):
         assert word in missing
     assert outcome.efficiency == 1.0
     assert outcome.missions[0].energy.residual == 0.0
@@ -141,7 +193,10 @@ def test_one_row_idle_charge_only_and_steep_profiles_run(tmp_path, rows):
 
 def test_two_missions_stand_in_one_frame_and_both_are_counted(tmp_path):
     (tmp_path / "q.csv").write_text("time_s,power_w\n0,10000\n5,0\n")
-    missions = [{"profile": "p.csv", "passes_per_year": 10}, {"profile": "q.csv", "name": "short", "passes_per_year": 3}]
+    missions = [
+        {"profile": "p.csv", "passes_per_year": 10},
+        {"profile": "q.csv", "name": "short", "passes_per_year": 3},
+    ]
     outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", mission=missions)
     assert outcome.steps["mission"].tolist() == ["p", "short"]
     assert {c.mission for c in outcome.limits} == {"p", "short"}
@@ -174,7 +229,10 @@ def test_curtailment_fails_a_mission_unless_it_is_allowed(tmp_path):
 @pytest.mark.parametrize(
     ("changes", "said"),
     [
-        ({"link": {"voltage": "390 V"}}, r"0 s: topology 'half-bridge' cannot operate: the battery voltage is not below"),
+        (
+            {"link": {"voltage": "390 V"}},
+            r"0 s: topology 'half-bridge' cannot operate: the battery voltage is not below",
+        ),
         ({"battery": {"open_circuit_voltage": "795 V", "resistance": "0.2 ohm"}}, "cannot operate"),
         ({"stage": {**IDEAL["stage"], "topology": "quarter-bridge"}}, "no topology plugin named 'quarter-bridge'"),
         ({"limits": {"junction_temperature": "10 degC"}}, None),

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from contextlib import contextmanager
 
-from tideleg.run import Progress
+from tideleg.running import Progress
 
 
 @contextmanager

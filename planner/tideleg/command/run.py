@@ -24,7 +24,7 @@ def execute(given: argparse.Namespace) -> int:
     from tideleg.decide.explain import explained
     from tideleg.plan import load_plan
     from tideleg.report import print_page, write_results
-    from tideleg.run import run
+    from tideleg.running import run
 
     plan = load_plan(given.plan)
     with shown() as progress:

@@ -12,7 +12,7 @@ from tideleg.errors import InputError, NoEquilibriumError
 from tideleg.outcome import Outcome
 from tideleg.plan import Plan, load_plan
 from tideleg.registry import Registry, installed
-from tideleg.run import Progress, run
+from tideleg.running import Progress, run
 from tideleg.stage import build_stage
 
 

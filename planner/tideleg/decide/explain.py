@@ -17,7 +17,7 @@ from tideleg.errors import InputError, NoEquilibriumError
 from tideleg.outcome import Change, Outcome
 from tideleg.plan import Plan
 from tideleg.registry import Registry
-from tideleg.run import Progress, run
+from tideleg.running import Progress, run
 
 WARMER_K = 10.0
 AGED_RESISTANCE = 1.7

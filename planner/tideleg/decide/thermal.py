@@ -11,7 +11,7 @@ from tideleg.limits import LimitCheck
 from tideleg.outcome import Outcome
 from tideleg.plan import Plan, SizeTable, format_quantity
 from tideleg.registry import Registry
-from tideleg.run import Progress, run
+from tideleg.running import Progress, run
 
 TRIALS = 8
 """Halvings of the plate resistance's range on a logarithmic scale: a range of 100 : 1 comes down to 2 %."""

@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 import pytest
+
 from tideleg.command import main
 
 SCENARIOS = Path(__file__).parents[3] / "profiles"

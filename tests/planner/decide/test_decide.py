@@ -4,13 +4,14 @@ import shutil
 from pathlib import Path
 
 import pytest
+
 from tideleg import InputError
 from tideleg.decide.compare import compare
 from tideleg.decide.explain import explained
 from tideleg.decide.size import size
 from tideleg.decide.trial import rounded_down, rounded_up
 from tideleg.plan import load_plan
-from tideleg.run import run
+from tideleg.running import run
 
 SCENARIOS = Path(__file__).parents[3] / "profiles"
 
@@ -23,11 +24,15 @@ def commuter(tmp_path):
 
 def test_a_sized_stage_holds_and_each_value_says_what_set_it(commuter, tmp_path):
     text = commuter.read_text().replace("legs = 2", "legs = 7").replace("in_parallel = 2", "in_parallel = 5")
-    commuter.write_text(text.replace("[limits]", '[limits]\nbattery_voltage_ripple = "0.5 V"\nlink_voltage_ripple = "2 V"'))
+    commuter.write_text(
+        text.replace("[limits]", '[limits]\nbattery_voltage_ripple = "0.5 V"\nlink_voltage_ripple = "2 V"')
+    )
     sized = size(commuter, destination=tmp_path / "out" / "sized.toml")
     assert sized.outcome.holds, sized.outcome.verdict
     keys = {d.key: d for d in sized.decisions}
-    assert {"stage.legs", "stage.inductor.inductance", "stage.switch.in_parallel", "cooling.plate_resistance"} <= set(keys)
+    assert {"stage.legs", "stage.inductor.inductance", "stage.switch.in_parallel", "cooling.plate_resistance"} <= set(
+        keys
+    )
     assert keys["stage.legs"].value == 2
     assert keys["stage.legs"].before == "7"
     assert all(d.set_by for d in sized.decisions)
@@ -91,7 +96,9 @@ def test_compare_says_what_was_given_and_what_was_changed(commuter):
 def test_compare_refuses_other_missions_and_too_little(commuter, tmp_path):
     other = tmp_path / "other"
     shutil.copytree(commuter.parent, other)
-    (other / "plan.toml").write_text((other / "plan.toml").read_text().replace('coolant = "55 degC"', 'coolant = "54 degC"'))
+    (other / "plan.toml").write_text(
+        (other / "plan.toml").read_text().replace('coolant = "55 degC"', 'coolant = "54 degC"')
+    )
     with pytest.raises(InputError, match="its missions differ"):
         compare([commuter, other / "plan.toml"])
     with pytest.raises(InputError, match="at least two plans"):

@@ -5,6 +5,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.linalg import expm
+
 from tideleg import InputError, Mass, Network, Path, Seat
 from tideleg.heat import Propagator, modes
 
@@ -79,7 +80,10 @@ def test_splitting_every_step_tenfold_changes_nothing(power, seconds):
     boundary = np.full((2, power.shape[1]), 40.0)
     coarse = respond(solved, power, boundary, np.full(power.shape[1], seconds))
     fine = respond(
-        solved, np.repeat(power, 10, axis=1), np.repeat(boundary, 10, axis=1), np.full(power.shape[1] * 10, seconds / 10)
+        solved,
+        np.repeat(power, 10, axis=1),
+        np.repeat(boundary, 10, axis=1),
+        np.full(power.shape[1] * 10, seconds / 10),
     )
     np.testing.assert_allclose(coarse.end, fine.end[..., 9::10], rtol=0, atol=1e-9)
     means = fine.mean.reshape(3, 1, -1, 10).mean(axis=-1)

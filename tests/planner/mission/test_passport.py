@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from tideleg.mission import Profile, passport
 from tideleg.mission.passport import greatest_rms
 

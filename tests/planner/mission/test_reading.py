@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from tideleg import ProfileError
 from tideleg.mission import Vehicle, read_profile
 

@@ -1,6 +1,7 @@
 """A plan is read whole, or refused with file, line, key, what was found and what to do."""
 
 import pytest
+
 from tideleg import PlanError
 from tideleg.plan import format_quantity, load_plan, plan_from_mapping, plan_schema, read_table, write_plan
 from tideleg.plan.lines import line_of
@@ -177,7 +178,9 @@ def test_a_plan_from_a_mapping_needs_no_file(folder):
 def test_writing_keeps_comments_moves_files_and_can_be_read_again(plan_file, folder):
     plan = load_plan(plan_file())
     target = folder / "deep" / "sized.toml"
-    write_plan(plan, {"stage.inductor.inductance": "99 uH", "cooling.plate_resistance": "5 K/kW"}, target, "by us\nfor us")
+    write_plan(
+        plan, {"stage.inductor.inductance": "99 uH", "cooling.plate_resistance": "5 K/kW"}, target, "by us\nfor us"
+    )
     text = target.read_text()
     assert text.startswith("# by us\n# for us\n")
     assert "# wound by us" in text
