@@ -104,7 +104,7 @@ def current_at_power(power: Values, voltage: Values, resistance: Values) -> Floa
 
     Examples
     --------
-    >>> float(round(current_at_power(50e3, 400.0, 0.1), 5))
+    >>> round(float(current_at_power(50e3, 400.0, 0.1)), 5)
     129.17131
     """
     root = np.sqrt(np.asarray(voltage * voltage - 4.0 * resistance * power))

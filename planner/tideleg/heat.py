@@ -94,6 +94,7 @@ class Propagator:
         self._rise = rise[:, None, :]
         self._mean_decay = (rise / shares)[:, None, :]
         self._scan = LinearScan(np.exp(-shares)[:, None, :])
+        self._same_step = self._own_response()
 
     def respond(self, state: FloatArray, power: FloatArray, boundary: FloatArray) -> Response:
         """Return the temperatures under losses held in each step.
@@ -122,6 +123,9 @@ class Propagator:
 
     def same_step_response(self) -> FloatArray:
         """Return (part, 1, S): warming of a step's mean temperature per watt of the part in that same step [K/W]."""
+        return self._same_step
+
+    def _own_response(self) -> FloatArray:
         m, n = self.modes, len(self.modes.parts)
         own = m.output * m.gain[:, :n].T
         at_once = np.diagonal(m.direct[:, :n])[:, None, None]

@@ -9,6 +9,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+
 from tideleg.mission import Vehicle, at_wheels, stage_power
 
 COMMUTER = Path(__file__).parents[2] / "profiles" / "commuter"
@@ -35,7 +36,12 @@ def distance(speed):
 
 
 def test_dc_01_and_dc_04_phases_and_checksum(wltc):  # found (tables), computed (sum)
-    assert [last - first + (first == 0) * 0 + 1 - (first == 0) for first, last in PHASES.values()] == [589, 433, 455, 323]
+    assert [last - first + (first == 0) * 0 + 1 - (first == 0) for first, last in PHASES.values()] == [
+        589,
+        433,
+        455,
+        323,
+    ]
     assert len(wltc) == 1801
     assert wltc.sum() == pytest.approx(83758.6, abs=0.05)
 
@@ -116,8 +122,8 @@ def test_cycle_energies(row, cycle, vehicle, expected, tolerance, request):
 
 
 def test_rl_08_default_road_load():  # computed: 0.140 TM; 2.8e-6 TM + 0.0170 width height
-    assert 0.140 * 1500.0 == pytest.approx(210.0, rel=1e-9)
-    assert 2.8e-6 * 1500.0 + 0.0170 * 1.8 * 1.5 == pytest.approx(0.0501, rel=1e-9)
+    assert pytest.approx(210.0, rel=1e-9) == 0.140 * 1500.0
+    assert pytest.approx(0.0501, rel=1e-9) == 2.8e-6 * 1500.0 + 0.0170 * 1.8 * 1.5
 
 
 REFERENCE_CAR = Vehicle(1500.0, 1.0, drag_area_m2=0.70, rolling_coefficient=0.012, air_density_kg_m3=1.2)
@@ -179,7 +185,9 @@ def test_trap_the_rotating_mass_stays_out_of_the_road_load():
 
 
 def test_what_regeneration_leaves_to_the_brakes_is_counted():
-    limited = Vehicle(1500.0, 1.0, 0.7, 0.012, drivetrain_efficiency=0.9, regeneration_limit_w=5e3, regeneration_share=0.8)
+    limited = Vehicle(
+        1500.0, 1.0, 0.7, 0.012, drivetrain_efficiency=0.9, regeneration_limit_w=5e3, regeneration_share=0.8
+    )
     seconds = np.ones(3)
     wheel = at_wheels(limited, np.array([20.0, 15.0, 10.0, 10.0]), seconds)
     demanded = stage_power(limited, wheel, seconds)

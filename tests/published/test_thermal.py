@@ -4,8 +4,11 @@ Status of each row: "found" - value and inputs seen in the source; "found inputs
 exact formula; "closed form" - exact mathematics; "from memory" - a known value whose source was not at hand.
 """
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
+
 from tideleg import Mass, Network, Path, Seat
 from tideleg.heat import Propagator, modes
 
@@ -72,8 +75,8 @@ def test_th_05_cold_plate_refers_to_the_coolant_outlet():
     flow = 0.5 * 3.785411784e-3 / 60.0
     rise = 500.0 / (998.2 * 4184.0 * flow)
     assert rise == pytest.approx(4.0, rel=0.06)
-    assert (55.0 - 20.0 - 4.0) / 500.0 == pytest.approx(0.062, rel=1e-6)
-    assert 0.062 * 8.0 == pytest.approx(0.496, rel=0.01)
+    assert pytest.approx(0.062, rel=1e-6) == (55.0 - 20.0 - 4.0) / 500.0
+    assert pytest.approx(0.496, rel=0.01) == 0.062 * 8.0
     seats = (Seat("die", "plate"),)
     masses = (Mass("plate", 0.0), Mass("outlet", 0.0))
     paths = (Path("plate", "outlet", 0.062), Path("outlet", "coolant", 4.0 / 500.0))
@@ -95,7 +98,9 @@ SEVEN_R = (0.002748817, 0.005715661, 0.04153561, 0.05616478, 0.3286516, 1.016057
 SEVEN_C = (2.916343e-05, 0.0001725521, 0.0002092143, 0.001786133, 0.002129755, 0.008451135, 0.0863404)
 
 
-@pytest.mark.parametrize(("time", "impedance"), [(1e-4, 0.142108), (1e-3, 0.4788391), (1e-2, 1.210487), (1e9, 1.580944)])
+@pytest.mark.parametrize(
+    ("time", "impedance"), [(1e-4, 0.142108), (1e-3, 0.4788391), (1e-2, 1.210487), (1e9, 1.580944)]
+)
 def test_th_07_seven_cells(time, impedance):
     cells = tuple((r, r * c) for r, c in zip(SEVEN_R, SEVEN_C, strict=True))
     assert step_response(chain(cells), time) == pytest.approx(impedance, rel=1e-4)
@@ -192,7 +197,7 @@ def test_th_15_a_ladder_of_silicon_follows_the_half_space():
     k, rho_cp, slice_m, count = 150.0, 1.65e6, 4e-6, 300
     masses = tuple(Mass(f"s{i}", rho_cp * slice_m) for i in range(count))
     names = [*(m.name for m in masses), "coolant"]
-    paths = tuple(Path(a, b, slice_m / k) for a, b in zip(names, names[1:], strict=False))
+    paths = tuple(Path(a, b, slice_m / k) for a, b in pairwise(names))
     solved = modes(Network(("coolant",), masses, paths, (Seat("die", "s0"),)))
     surface = 1e6 * (step_response(solved, 1e-3) + 0.5 * slice_m / k)
     assert surface == pytest.approx(2.268127, rel=5e-3)
