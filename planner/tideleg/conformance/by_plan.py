@@ -1,0 +1,98 @@
+"""Every check of an installed plugin, with the data of a plan: what `tideleg plugins check` runs."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from typing import Any
+
+from pydantic import BaseModel, ValidationError
+
+from tideleg.conformance.checks import Check
+from tideleg.conformance.cooling import cooling_checks
+from tideleg.conformance.losses import loss_checks
+from tideleg.conformance.topologies import topology_checks
+from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
+from tideleg.errors import InputError
+from tideleg.plan import Plan
+from tideleg.quantity import parse
+from tideleg.registry import Plugin, Registry
+
+TABLES: dict[PartKind, tuple[str, ...]] = {
+    "switch": ("switch",),
+    "inductor": ("inductor",),
+    "capacitor": ("link_capacitor", "battery_capacitor"),
+    "busbar": ("busbar",),
+    "control": ("control",),
+}
+
+
+def plugin_checks(name: str, plan: Plan, registry: Registry) -> tuple[Check, ...]:
+    """Return the checks of every plugin of that name.
+
+    Raises
+    ------
+    InputError
+        If none of that name is installed.
+    """
+    found = [plugin for plugin in registry.plugins if plugin.name == name]
+    if not found:
+        names = ", ".join(sorted({plugin.name for plugin in registry.plugins}))
+        broken = "".join(f"\n  {fault.sentence()}" for fault in registry.faults if fault.name == name)
+        raise InputError(f"no plugin named {name!r} can be checked; installed are {names}{broken}")
+    return tuple(check for plugin in found for check in _checks(plugin, plan))
+
+
+def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
+    offer: Any = plugin.offer
+    if plugin.kind == "topology":
+        yield from _topology(offer, plan)
+    elif plugin.kind == "loss":
+        yield from _loss(offer, plan)
+    else:
+        yield from _cooling(offer, plan)
+
+
+def _topology(topology: Topology, plan: Plan) -> Iterator[Check]:
+    settings = _own(plan.stage.settings, topology.settings)
+    if "legs" in topology.settings.model_fields:
+        settings["legs"] = _legs(topology, settings)
+    voltages = plan.battery.open_circuit_voltage.value
+    link = plan.link.voltage
+    inductance = plan.stage.parts.get("inductor", {}).get("inductance", 150e-6)
+    yield from topology_checks(
+        topology,
+        settings,
+        inductance=parse(inductance, "inductance"),
+        battery=(min(voltages), max(voltages)),
+        link=(0.9 * link, 1.1 * link),
+    )
+
+
+def _legs(topology: Topology, settings: Mapping[str, object]) -> int:
+    """Return as many legs as the plan has, or one where the topology has no more."""
+    wanted = settings.get("legs", 2)
+    try:
+        topology.settings.model_validate({**settings, "legs": wanted})
+    except ValidationError:
+        return 1
+    return int(str(wanted))
+
+
+def _loss(model: LossModel, plan: Plan) -> Iterator[Check]:
+    settings: dict[str, object] = {}
+    for table in TABLES[model.reads]:
+        settings = settings or _own(plan.stage.parts.get(table, {}), model.settings)
+    yield from loss_checks(model, settings)
+
+
+def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
+    own = _own(plan.cooling.settings if plan.cooling else {}, model.settings)
+    parts: dict[PartKind, Mapping[str, object]] = {}
+    for kind, keys in model.part_settings.items():
+        for table in TABLES[kind]:
+            parts[kind] = parts.get(kind) or _own(plan.stage.parts.get(table, {}), keys)
+    yield from cooling_checks(model, own, parts)
+
+
+def _own(given: Mapping[str, Any], model: type[BaseModel]) -> dict[str, object]:
+    return {key: value for key, value in given.items() if key in model.model_fields}
