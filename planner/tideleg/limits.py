@@ -112,6 +112,10 @@ def _current_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[L
             if limits.inductor_peak_current is not None:
                 value, *when = _greatest(seen, f"{name}.current_peak_a", f"{name}.current_valley_a")
                 yield _upper("inductor peak current", name, value, limits.inductor_peak_current, "A", when)
+            saturation = getattr(part.base, "saturation_current", None)
+            if saturation is not None:
+                value, *when = _greatest(seen, f"{name}.current_peak_a", f"{name}.current_valley_a")
+                yield _upper("inductor saturation current", name, value, saturation, "A", when)
             if limits.ripple_ratio is not None and seen.rated_leg_current > 0.0:
                 value, *when = _greatest(seen, f"{name}.current_ripple_a")
                 yield _upper("ripple ratio", name, value / seen.rated_leg_current, limits.ripple_ratio, "share", when)

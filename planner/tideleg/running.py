@@ -45,6 +45,13 @@ RULES = (
 )
 
 
+NEVER_MODELLED = (
+    "wear and life of parts: no life model in this release",
+    "fall of the inductance with current, and spread between legs or chips in parallel: not modelled in this release",
+)
+"""Mechanisms that no data can bring into this release; page one says so every time."""
+
+
 class MissionRun(NamedTuple):
     """One mission as it was marched."""
 
@@ -162,7 +169,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         worst=worst_instant(stage, checks, steps, {name: r.blocks for name, r in runs.items()}),
         changes=(),
         safety=_safety(plan, stage, battery, steps),
-        not_modelled=stage.not_modelled + unchecked,
+        not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
         warnings=warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal),
         rules=RULES,
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),

@@ -247,6 +247,13 @@ def test_what_cannot_be_is_said_with_its_instant(tmp_path, changes, said):
         ideal(tmp_path, rows, **changes)
 
 
+def test_a_saturation_current_is_held_against_the_peak(tmp_path):
+    stage = {**IDEAL["stage"], "inductor": {"inductance": "500 uH", "saturation_current": "105 A"}}
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", stage=stage)
+    check = next(c for c in outcome.limits if c.name == "inductor saturation current")
+    assert (check.value, check.holds) == (pytest.approx(110.0), False)
+
+
 def test_a_missing_coolant_is_asked_for(tmp_path):
     shutil.copytree(SCENARIOS / "commuter", tmp_path / "c")
     path = tmp_path / "c" / "plan.toml"
