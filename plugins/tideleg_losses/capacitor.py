@@ -13,12 +13,12 @@ from tideleg_losses.shared_keys import refuse_keys_without
 
 
 class CapacitorSettings(BaseModel):
-    """Keys of a capacitor: esr, taken as constant, and the ripple that others on the port add (rms; say 0 for none)."""
+    """Keys of a capacitor: esr, taken as constant, and the ripple that others on the port add (rms)."""
 
     model_config = ConfigDict(extra="forbid")
 
     esr: Annotated[quantity.Resistance, Field(ge=0.0)] | None = None
-    external_ripple_current: Annotated[quantity.Current, Field(ge=0.0)] | None = None
+    external_ripple_current: Annotated[quantity.Current, Field(ge=0.0)] = 0.0
 
     @model_validator(mode="after")
     def _has_a_resistance(self) -> Self:
@@ -33,32 +33,20 @@ def esr_from_dissipation(dissipation_factor: Values, frequency: Values, capacita
 
 @dataclass(frozen=True)
 class EsrTerm:
-    """ESR times the mean square of the whole ac current of the stage; the source or load takes the mean."""
+    """ESR times the mean square of the whole ac current of the stage, the source or load taking the mean.
+
+    Ripple from outside adds in squares, since it has no fixed phase to the stage's own; it flows at idle too.
+    """
 
     esr: Values
+    external: Values
     mechanism: str = "capacitor ESR"
     ohmic: bool = False
     heats: bool = True
 
     def at(self, part: Exchange, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of the capacitor [W]; the resistance is taken as constant."""
-        watts = self.esr * part.current.ac_mean_square() + np.zeros_like(temperature)
-        return Line(watts, np.zeros_like(watts))
-
-
-@dataclass(frozen=True)
-class ExternalRippleTerm:
-    """ESR times the squared ripple of others, all the time: it has no fixed phase to the stage's, so squares add."""
-
-    esr: Values
-    ripple: Values
-    mechanism: str = "external ripple"
-    ohmic: bool = False
-    heats: bool = True
-
-    def at(self, part: Exchange, timing: Timing, temperature: FloatArray) -> Line:
-        """Return the loss of the capacitor [W]."""
-        watts = self.esr * self.ripple * self.ripple + np.zeros_like(temperature)
+        watts = self.esr * (part.current.ac_mean_square() + self.external * self.external) + np.zeros_like(temperature)
         return Line(watts, np.zeros_like(watts))
 
 
@@ -69,17 +57,12 @@ class CapacitorEsr:
     name: str = "capacitor-esr"
     source: str = "ESR I_rms²: Infineon, PFC boost converter design guide, DN 2013-01, Eq. 34"
     reads: PartKind = "capacitor"
-    mechanisms: tuple[str, ...] = ("capacitor ESR", "external ripple")
+    mechanisms: tuple[str, ...] = ("capacitor ESR",)
     settings: type[BaseModel] = CapacitorSettings
 
     def terms(self, settings: CapacitorSettings) -> tuple[LossTerm[Exchange], ...]:
-        """Return the terms if a series resistance is given, that of others' ripple if it is stated."""
-        if settings.esr is None:
-            return ()
-        own = EsrTerm(settings.esr)
-        if settings.external_ripple_current is None:
-            return (own,)
-        return (own, ExternalRippleTerm(settings.esr, settings.external_ripple_current))
+        """Return the term if a series resistance is given."""
+        return () if settings.esr is None else (EsrTerm(settings.esr, settings.external_ripple_current),)
 
 
 @hookimpl

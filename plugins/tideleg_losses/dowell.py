@@ -61,7 +61,7 @@ def round_wire_height(diameter: Values) -> Values:
 
 
 def litz_factor(
-    frequency: Values, degc: Values, turns: float, strands: float, strand_diameter: Values, window_width: Values
+    frequency: Values, degc: Values, turns: Values, strands: Values, strand_diameter: Values, window_width: Values
 ) -> FloatArray:
     """Return R_ac/R_dc of a litz winding [-]; valid for strands thinner than about one skin depth.
 

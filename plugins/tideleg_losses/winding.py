@@ -1,39 +1,73 @@
-"""Copper loss of an inductor winding: all current at the dc resistance, and the excess of its harmonics."""
+"""Copper loss of an inductor winding: all of its current at the dc resistance, and the excess of its harmonics."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Annotated, Literal, Self
 
 import numpy as np
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
 from tideleg import FloatArray, Line, LossTerm, PartKind, Timing, Values, Winding, hookimpl, quantity
-from tideleg_losses.dowell import COPPER_SLOPE_20, copper_factor, dowell_factor, round_wire_height, skin_depth
+from tideleg_losses.dowell import COPPER_SLOPE_20, copper_factor, round_wire_height
+from tideleg_losses.shared_keys import refuse_keys_without, refuse_missing
+from tideleg_losses.winding_ac import DowellTerm, LitzTerm, RatioTerm
 
-HARMONICS = 8
-"""Harmonics taken one by one; what is left of the ac mean square is charged at the factor of twice the next."""
+_LAYERED = ("winding_layers", "winding_conductor_thickness")
+_LITZ = ("winding_strands", "winding_strand_diameter", "winding_width")
+_TABLE = ("ac_resistance_ratio",)
 
 
 class WindingSettings(BaseModel):
-    """Keys of [stage.inductor]: winding_resistance at 20 degC; layers and conductor for the ac excess."""
+    """Keys of [stage.inductor]: winding_resistance at 20 degC, and one of three ways to know the ac resistance.
+
+    Layers of foil or round wire (winding_conductor_thickness is the foil's height or the wire's diameter), litz, or a
+    measured table ac_resistance_ratio = [[Hz, R_ac/R_dc], ...].
+    """
 
     model_config = ConfigDict(extra="forbid")
 
     winding_resistance: Annotated[quantity.Resistance, Field(gt=0.0)] | None = None
-    winding_layers: Annotated[float, Field(ge=0.5)] | None = None
-    winding_conductor: Literal["foil", "round"] = "round"
+    winding_conductor: Literal["foil", "round", "litz"] = "round"
+    winding_layers: float | None = Field(default=None, ge=0.5, le=100.0)
     winding_conductor_thickness: Annotated[quantity.Length, Field(gt=0.0)] | None = None
     winding_porosity: float = Field(default=1.0, gt=0.0, le=1.0)
+    winding_strands: float | None = Field(default=None, ge=1.0)
+    winding_strand_diameter: Annotated[quantity.Length, Field(gt=0.0)] | None = None
+    winding_width: Annotated[quantity.Length, Field(gt=0.0)] | None = None
+    turns: Annotated[float, Field(gt=0.0)] | None = None
+    ac_resistance_ratio: tuple[tuple[quantity.Frequency, Annotated[float, Field(ge=1.0)]], ...] | None = None
 
     @model_validator(mode="after")
-    def _whole(self) -> Self:
-        ac = (self.winding_layers, self.winding_conductor_thickness)
-        if any(v is None for v in ac) and any(v is not None for v in ac):
-            raise ValueError("winding_layers and winding_conductor_thickness belong together; one is missing")
-        if ac[0] is not None and self.winding_resistance is None:
-            raise ValueError("winding_resistance is missing: the ac excess is a multiple of it")
+    def _knows_one_ac_resistance(self) -> Self:
+        ways = {"layers": _LAYERED, "litz": _LITZ, "a table": _TABLE}
+        given = {way: [key for key in keys if getattr(self, key) is not None] for way, keys in ways.items()}
+        used = [way for way, keys in given.items() if keys]
+        if len(used) > 1:
+            found = ", ".join(key for way in used for key in given[way])
+            raise ValueError(f"found {found}; give one way to know the ac resistance: {', '.join(ways)}")
+        refuse_keys_without(self, ("winding_conductor_thickness",), ("winding_porosity",))
+        refuse_keys_without(self, (*_LAYERED, *_LITZ), ("winding_conductor",))
+        if not used:
+            return self
+        refuse_missing(self, ("winding_resistance",), "the ac excess is a multiple of it")
+        is_litz = self.winding_conductor == "litz"
+        if used != ["a table"] and (used == ["litz"]) != is_litz:
+            raise ValueError(
+                f"winding_conductor: found {self.winding_conductor!r} with {', '.join(given[used[0]])}; litz goes with"
+                f" {', '.join(_LITZ)}, foil and round go with {', '.join(_LAYERED)}"
+            )
+        refuse_missing(self, ways[used[0]], f"the ac resistance from {used[0]} needs {', '.join(ways[used[0]])}")
+        if is_litz:
+            refuse_missing(self, ("turns",), "the field in a litz winding grows with its turns")
+        self._refuse_unordered_table()
         return self
+
+    def _refuse_unordered_table(self) -> None:
+        table = self.ac_resistance_ratio
+        if table is not None and (len(table) < 2 or any(a[0] >= b[0] for a, b in pairwise(table))):
+            raise ValueError("ac_resistance_ratio: give two or more points [Hz, ratio] with rising frequency")
 
     @property
     def conductor_height(self) -> float:
@@ -46,7 +80,10 @@ class WindingSettings(BaseModel):
 
 @dataclass(frozen=True)
 class DcTerm:
-    """R(T) times the mean square of the whole current: what the dc resistance costs, ripple included."""
+    """R(T) times the mean square of the whole current: what the dc resistance costs, ripple included.
+
+    What the ripple costs above that is "winding ac"; without data for it the ripple still costs this much.
+    """
 
     resistance: Values
     mechanism: str = "winding dc"
@@ -55,47 +92,8 @@ class DcTerm:
 
     def at(self, part: Winding, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of one winding [W] and its slope [W/K]."""
-        square = self.resistance * part.current.mean_square()
-        return Line(square * copper_factor(temperature), COPPER_SLOPE_20 * square + np.zeros_like(temperature))
-
-
-@dataclass(frozen=True)
-class AcTerm:
-    """R(T) (F_n - 1) I_n²/2 summed over harmonics, F after Dowell at each harmonic and temperature."""
-
-    resistance: Values
-    height: float
-    layers: float
-    mechanism: str = "winding ac"
-    ohmic: bool = False
-    heats: bool = True
-
-    def at(self, part: Winding, timing: Timing, temperature: FloatArray) -> Line:
-        """Return the excess of one winding [W] and its slope [W/K]."""
-        depth = skin_depth(timing.frequency, temperature)
-        phi = self.height / depth
-        left = part.current.ac_mean_square()
-        excess: FloatArray = np.zeros_like(temperature)
-        slope: FloatArray = np.zeros_like(temperature)
-        for order, amplitude in enumerate(part.current.harmonics(HARMONICS), start=1):
-            square = 0.5 * np.abs(amplitude) ** 2
-            left = left - square
-            excess, slope = self._added(excess, slope, square, phi * np.sqrt(order))
-        rest = np.maximum(left, 0.0)
-        excess, slope = self._added(excess, slope, rest, phi * np.sqrt(2.0 * (HARMONICS + 1)))
-        resistance = self.resistance * copper_factor(temperature)
-        per_kelvin = COPPER_SLOPE_20 / copper_factor(temperature)
-        # With x = phi: d(R (F - 1))/dT = R' (F - 1) + R F' dx/dT, and x falls as 1/sqrt(rho): dx/dT = -x rho'/(2 rho).
-        return Line(resistance * excess, resistance * per_kelvin * (excess - 0.5 * slope))
-
-    def _added(
-        self, excess: FloatArray, slope: FloatArray, square: FloatArray, phi: FloatArray
-    ) -> tuple[FloatArray, FloatArray]:
-        """Add one harmonic's (F - 1) I² and phi F'(phi) I²."""
-        factor = dowell_factor(phi, self.layers)
-        nearby = 1e-4 * phi
-        rise = (dowell_factor(phi + nearby, self.layers) - dowell_factor(phi - nearby, self.layers)) / 2e-4
-        return excess + (factor - 1.0) * square, slope + rise * square
+        cold = self.resistance * part.current.mean_square()
+        return Line(cold * copper_factor(temperature), COPPER_SLOPE_20 * cold + np.zeros_like(temperature))
 
 
 @dataclass(frozen=True)
@@ -103,19 +101,35 @@ class WindingLoss:
     """The model."""
 
     name: str = "winding"
-    source: str = "Joule's law; copper after IEC 60028; P. L. Dowell, Proc. IEE 113(8), 1966, per harmonic"
+    source: str = (
+        "Joule's law; copper after IEC 60028; P. L. Dowell, Proc. IEE 113(8), 1966, per harmonic;"
+        " litz: C. R. Sullivan, IEEE Trans. Power Electronics 14(2), 1999"
+    )
     reads: PartKind = "inductor"
     mechanisms: tuple[str, ...] = ("winding dc", "winding ac")
     settings: type[BaseModel] = WindingSettings
 
     def terms(self, settings: WindingSettings) -> tuple[LossTerm[Winding], ...]:
-        """Return the dc term if a resistance is given, and the ac term if the conductor is."""
+        """Return the dc term if a resistance is given, and the ac term if its resistance is known in some way."""
         if settings.winding_resistance is None:
             return ()
+        ac = ac_term(settings, settings.winding_resistance)
         dc = DcTerm(settings.winding_resistance)
-        if settings.winding_layers is None:
-            return (dc,)
-        return (dc, AcTerm(settings.winding_resistance, settings.conductor_height, settings.winding_layers))
+        return (dc,) if ac is None else (dc, ac)
+
+
+def ac_term(settings: WindingSettings, resistance: float) -> LossTerm[Winding] | None:
+    """Return the term of the harmonics' excess in the way that the data support, or None."""
+    s = settings
+    if s.ac_resistance_ratio is not None:
+        frequencies, ratios = zip(*s.ac_resistance_ratio, strict=True)
+        return RatioTerm(resistance, frequencies, ratios)
+    if s.winding_strands is not None:
+        assert s.turns is not None
+        assert s.winding_strand_diameter is not None
+        assert s.winding_width is not None
+        return LitzTerm(resistance, s.turns, s.winding_strands, s.winding_strand_diameter, s.winding_width)
+    return None if s.winding_layers is None else DowellTerm(resistance, s.conductor_height, s.winding_layers)
 
 
 @hookimpl
