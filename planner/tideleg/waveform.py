@@ -199,27 +199,6 @@ class Waveform:
             total = total + s.width * middle * (level + tilt)
         return np.asarray(2.0 * total, dtype=np.complex128)
 
-    def harmonics(self, highest: int) -> list[NDArray[np.complex128]]:
-        """Return the complex amplitudes of the harmonics 1 to `highest` [A], each as `harmonic` gives it.
-
-        The turning factors of one harmonic follow from the last by a product, so this costs far less than asking for
-        each alone.
-        """
-        totals: list[Any] = [0.0] * highest
-        for s in self.segments:
-            width = np.asarray(s.width, dtype=np.float64)
-            present = width > 0.0
-            slope = np.where(present, (s.end - s.start) / np.where(present, width, 1.0), 0.0)
-            turn_begin = np.exp(-2j * np.pi * np.asarray(s.place, dtype=np.float64))
-            turn_end = turn_begin * np.exp(-2j * np.pi * width)
-            begin, end = turn_begin, turn_end
-            for i in range(highest):
-                rate = 2.0 * np.pi * (i + 1)
-                ends = (s.start * begin - s.end * end) / (1j * rate)
-                totals[i] = totals[i] + np.where(present, ends - slope * (begin - end) / (rate * rate), 0.0)
-                begin, end = begin * turn_begin, end * turn_end
-        return [np.asarray(2.0 * total, dtype=np.complex128) for total in totals]
-
     def trace(self, step: tuple[int, ...] = ()) -> tuple[FloatArray, FloatArray]:
         """Return the corner points of one step as (fraction of period, current [A]), for drawing.
 
