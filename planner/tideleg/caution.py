@@ -139,6 +139,17 @@ def voltage_class(highest_v: float) -> str:
     return "above 1500 V DC, outside ISO 6469-3:2021 (from memory)"
 
 
+def ampere_text(ampere: float) -> str:
+    """Return a current as people read it, in kA from ten thousand on.
+
+    Examples
+    --------
+    >>> ampere_text(8236.4), ampere_text(22260.0)
+    ('8236 A', '22.26 kA')
+    """
+    return f"{ampere:.4g} A" if ampere < 9999.5 else f"{ampere / 1e3:.4g} kA"
+
+
 def safety(facts: SafetyFacts) -> Safety:
     """Return the caution of one design.
 
@@ -227,7 +238,7 @@ def _sentences(facts: SafetyFacts, n: Safety) -> tuple[str, ...]:
         " those decide wherever they differ from this page.",
         _energy_sentence(facts, n),
         f"{n.discharge_to_v:g} V and {n.discharge_within_s:g} s are figures to choose, not a rule of this page. Printed"
-        " for 60 V DC: 1 s for connectors opened without tools (UN R100, from memory), 5 s for machines (IEC 60204-1),"
+        " for 60 V DC: 1 s for connectors opened without tools (FMVSS 305), 5 s for machines (IEC 60204-1),"
         " 10 s after a crash (ISO 6469-4:2015), 60 s (UN R94, from memory); others limit the energy to 0.2 J or the"
         " charge to 45, 50 or 60 uC. The local code decides.",
         _short_sentence(facts, n),
@@ -271,8 +282,8 @@ def _energy_sentence(facts: SafetyFacts, n: Safety) -> str:
 def _short_sentence(facts: SafetyFacts, n: Safety) -> str:
     size = "a current that the given data do not bound (no battery or path resistance)"
     if n.link_short_current_a is not None:
-        within = "" if facts.path_resistance_ohm > 0.0 else ", bounded here by the battery's resistance alone"
-        size = f"up to about {n.link_short_current_a:.4g} A{within},"
+        within = "" if facts.path_resistance_ohm > 0.0 else " (bounded here by the battery's resistance alone)"
+        size = f"up to about {ampere_text(n.link_short_current_a)}{within}"
     return (
         f"A short of the link draws {size} from the battery through the upper diodes, rising at first by"
         f" {n.link_short_rise_a_per_us:.3g} A/us and faster once the inductors saturate. Boosting, the stage cannot"

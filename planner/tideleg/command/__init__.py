@@ -7,6 +7,7 @@ Exit statuses: 0 done; 1 unexpected fault; 2 bad input, one message and no trace
 from __future__ import annotations
 
 import argparse
+import os
 import sys
 from collections.abc import Sequence
 
@@ -29,6 +30,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except NoEquilibriumError as error:
         print(f"tideleg: {error}", file=sys.stderr)
         return NOT_HELD
+    except BrokenPipeError:
+        # The reader of the output went away (a pager, `head`): nothing is wrong, and nothing more can be said to it.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return DONE
     except KeyboardInterrupt:
         print("tideleg: interrupted; earlier results are as they were", file=sys.stderr)
         return INTERRUPTED

@@ -17,7 +17,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def execute(given: argparse.Namespace) -> int:
-    """Run, print, write; return the exit status."""
+    """Run, write, print; return the exit status."""
     from rich.console import Console
 
     from tideleg.command.progress import shown
@@ -31,9 +31,9 @@ def execute(given: argparse.Namespace) -> int:
         outcome = run(plan, progress=progress)
         if not given.brief:
             outcome = explained(plan, outcome, progress=progress)
+    folder = given.out or plan.folder / "results"
+    written = write_results(outcome, folder)  # first: a reader that closes the page early must not cost the results
     console = Console()
     print_page(outcome, console)
-    folder = given.out or plan.folder / "results"
-    written = write_results(outcome, folder)
     console.print(f"\n{len(written)} files in {folder}; open {folder / 'report.html'}", soft_wrap=True)
     return 3 if given.enforce and not outcome.holds else 0

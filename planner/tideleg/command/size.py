@@ -36,9 +36,9 @@ def execute(given: argparse.Namespace) -> int:
         text = beside.read_text(encoding="utf-8")
     finally:
         shutil.rmtree(beside.parent, ignore_errors=True)
+    written = write_results(sized.outcome, folder, extra={"sized.toml": text})
     console = Console()
     print_page(sized.outcome, console)
     print_sizing(sized, console)
-    written = write_results(sized.outcome, folder, extra={"sized.toml": text})
     console.print(f"\n{len(written)} files in {folder}; the plan is {folder / 'sized.toml'}", soft_wrap=True)
     return 3 if given.enforce and not sized.outcome.holds else 0

@@ -1,4 +1,4 @@
-"""Numbers and labels as every page prints them."""
+"""Numbers, labels and answers as every page prints them: plain ASCII, so that any terminal shows them."""
 
 from __future__ import annotations
 
@@ -6,7 +6,9 @@ from tideleg.limits import LimitCheck
 from tideleg.outcome import Change, Outcome
 from tideleg.verdict import quantity_text
 
-KWH = 3.6e6
+LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
+CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
+BROKEN = "DOES NOT HOLD"
 
 
 def plain(name: str) -> str:
@@ -14,70 +16,175 @@ def plain(name: str) -> str:
     return name.replace("_", " ")
 
 
+def sentence(text: str) -> str:
+    """Return the text with a capital and one full stop."""
+    return f"{text[:1].upper()}{text[1:]}".rstrip(".") + "."
+
+
+def time_text(seconds: float, mission: str) -> str:
+    """Return an instant; to the millisecond, which is finer than profiles are logged."""
+    return f"{round(seconds, 3):.12g} s of {mission}"
+
+
+def limit_label(check: LimitCheck) -> str:
+    """Return which limit of what, each word once: "link capacitor current" needs no "of link capacitor"."""
+    if check.part == "mission" and check.mission is not None:
+        return f"{check.name}, {check.mission}"
+    part = plain(check.part)
+    return check.name if part in check.name or part == "stage" else f"{check.name}, {part}"
+
+
+def margin_text(check: LimitCheck) -> str:
+    """Return the margin with its unit; a difference of temperatures is in K."""
+    return quantity_text(check.margin, "K" if check.unit == "degC" else check.unit)
+
+
 def instant(check: LimitCheck) -> str:
-    """Return when and in which mission a limit's value was met."""
-    return "-" if check.time_s is None else f"{check.time_s:.6g} s, {check.mission}"
+    """Return when and in which mission a limit's value was met; "-" where it is no matter of one instant."""
+    return "-" if check.time_s is None or check.mission is None else time_text(check.time_s, check.mission)
 
 
 def limit_cells(check: LimitCheck) -> tuple[str, ...]:
-    """Return one limit as cells: name, part, found, allowed, margin, share in use, instant, holds."""
+    """Return one limit as cells under `LIMIT_HEADS`."""
     return (
-        check.name,
-        plain(check.part),
+        limit_label(check),
         quantity_text(check.value, check.unit),
         quantity_text(check.limit, check.unit),
-        quantity_text(check.margin, "K" if check.unit == "degC" else check.unit),
-        f"{100.0 * check.used:.0f} %",
+        margin_text(check),
+        share_text(check.used),
         instant(check),
-        "holds" if check.holds else "DOES NOT HOLD",
+        "holds" if check.holds else BROKEN,
     )
 
 
-LIMIT_HEADS = ("limit", "part", "found", "allowed", "margin", "in use", "at", "")
+def share_text(share: float | None) -> str:
+    """Return a share of a limit in use as percent."""
+    return "-" if share is None else f"{100.0 * share:.0f} %"
 
 
 def change_cells(change: Change) -> tuple[str, ...]:
-    """Return one change of the plan as cells: what, holds, binding, share in use, hottest junction, efficiency."""
+    """Return one change of the plan as cells under `CHANGE_HEADS`."""
     return (
         change.what,
-        "holds" if change.holds else "DOES NOT HOLD",
+        "holds" if change.holds else BROKEN,
         change.binding or "no limit stated",
-        "-" if change.used is None else f"{100.0 * change.used:.0f} %",
+        share_text(change.used),
         "-" if change.greatest_junction_degc is None else f"{change.greatest_junction_degc:.1f} degC",
-        "-" if change.efficiency is None else f"{100.0 * change.efficiency:.2f} %",
+        "-" if change.efficiency is None else efficiency_text(change.efficiency),
     )
 
 
-CHANGE_HEADS = ("change", "", "then binds", "in use", "hottest junction", "efficiency")
+def efficiency_text(efficiency: float) -> str:
+    """Return an efficiency as percent, or why there is none."""
+    defined = efficiency == efficiency  # noqa: PLR0124  (nan is the only number unlike itself)
+    return f"{100.0 * efficiency:.3f} %" if defined else "not defined: no energy is moved"
+
+
+def answers(outcome: Outcome) -> list[tuple[str, str]]:
+    """Return what a reviewer asks and what this run answers, in the order of asking."""
+    return [
+        ("Does it do the mission?", sentence(outcome.verdict)),
+        ("With what margin?", _margin_answer(outcome)),
+        ("What binds, and when?", _binding_answer(outcome)),
+        ("What would change the answer?", _change_answer(outcome)),
+        ("How sure is it?", _sure_answer(outcome)),
+    ]
+
+
+def _margin_answer(outcome: Outcome) -> str:
+    binding = outcome.binding
+    if binding is None:
+        return "None can be given: the plan states no limit that could be checked."
+    left = "left" if binding.holds else "missing"
+    found = f"{quantity_text(binding.value, binding.unit)} of {quantity_text(binding.limit, binding.unit)}"
+    size = quantity_text(abs(binding.margin), "K" if binding.unit == "degC" else binding.unit)
+    return f"{size} {left}: {found}, {share_text(binding.used)} of the limit in use."
+
+
+def _binding_answer(outcome: Outcome) -> str:
+    binding = outcome.binding
+    worst = f"Worst instant: {time_text(outcome.worst.time_s, outcome.worst.mission)} ({outcome.worst.why})."
+    if binding is None:
+        return worst
+    others = [check for check in outcome.limits if not check.holds and check is not binding]
+    more = "".join(f"; also {limit_label(c)} at {share_text(c.used)}" for c in others)
+    if binding.time_s is None:
+        return f"{sentence(limit_label(binding) + ', no matter of one instant' + more)} {worst}"
+    return sentence(f"{limit_label(binding)}, at {instant(binding)}{more}")
+
+
+def _change_answer(outcome: Outcome) -> str:
+    if not outcome.changes:
+        return "Not asked in this run: it was made without re-runs."
+    differing = [c for c in outcome.changes if c.holds != outcome.holds]
+    count = len(outcome.changes)
+    if not differing:
+        worst = max(outcome.changes, key=lambda c: -1.0 if c.used is None else c.used)
+        close = "" if worst.used is None else f"; the nearest to it is: {worst.what} ({share_text(worst.used)} in use)"
+        return f"None of the {count} changes that were tried{close}."
+    words = "; ".join(f"{c.what} ({c.binding}{'' if c.used is None else ', ' + share_text(c.used)})" for c in differing)
+    verb = "would break" if outcome.holds else "would mend"
+    return f"{len(differing)} of the {count} changes that were tried {verb} it: {words}."
+
+
+def _sure_answer(outcome: Outcome) -> str:
+    absent, warned = len(outcome.not_modelled), len(outcome.warnings)
+    missing = "every mechanism known has data" if absent == 0 else f"{absent} things are not modelled for lack of data"
+    warning = "no warnings" if warned == 0 else f"{warned} warning{'s' if warned > 1 else ''}"
+    return sentence(f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)")
+
+
+def closure(outcome: Outcome) -> float:
+    """Return the greatest residual of the energy books over all missions, by magnitude [-]."""
+    energies = [m.energy for m in outcome.missions]
+    return max(max(abs(e.residual), abs(e.recomputed_residual)) for e in energies)
+
+
+def sureness(outcome: Outcome) -> list[str]:
+    """Return how sure the answer is: closures, passes of the relaxation, loop gain, what a reader is warned of."""
+    passes = max(m.passes for m in outcome.missions)
+    lines = [
+        f"energy in, out and lost closes to {closure(outcome):.0e} of the throughput, losses computed anew included",
+        f"currents, losses and temperatures settled together in {passes} pass{'es' if passes > 1 else ''} at most",
+    ]
+    if outcome.thermal:
+        hot = max(outcome.thermal, key=lambda entry: entry.loop_gain)
+        lines.append(
+            f"greatest thermal loop gain: {hot.loop_gain:.3f} ({plain(hot.part)}); at 1 no steady temperature exists"
+        )
+    else:
+        lines.append("no temperature is modelled")
+    lines += [f"warning: {warning}" for warning in outcome.warnings]
+    return lines
+
+
+def all_rules(outcome: Outcome) -> list[str]:
+    """Return the rules of the page and of every mission's profile."""
+    return [*outcome.rules, *(f"{m.name}: {rule}" for m in outcome.missions for rule in m.rules)]
+
+
+def energy_scale(greatest_j: float) -> tuple[float, str]:
+    """Return the unit of energy that suits the greatest of a table, as (size [J], symbol)."""
+    if greatest_j >= 3.6e6:
+        return 3.6e6, "kWh"
+    return (3.6e3, "Wh") if greatest_j >= 3.6e3 else (1.0, "J")
 
 
 def energy_rows(outcome: Outcome) -> list[tuple[str, ...]]:
     """Return the energy accounts as rows, a column a mission."""
     accounts = [m.energy for m in outcome.missions]
+    size, unit = energy_scale(max(max(a.throughput_j, a.requested_j) for a in accounts))
     labels = {
+        "requested": "requested_j",
+        "curtailed": "curtailed_j",
         "delivered to the link": "link_out_j",
         "taken from the link": "link_in_j",
         "given by the battery": "battery_out_j",
         "taken by the battery": "battery_in_j",
         "lost in the stage": "loss_j",
         "lost in the battery": "battery_heat_j",
-        "requested": "requested_j",
-        "curtailed": "curtailed_j",
     }
-    rows = [(label, *(f"{getattr(a, key) / KWH:.5g} kWh" for a in accounts)) for label, key in labels.items()]
-    rows.append(("books: in - out - loss, of throughput", *(f"{a.residual:.1e}" for a in accounts)))
-    rows.append(("books with losses computed anew", *(f"{a.recomputed_residual:.1e}" for a in accounts)))
+    rows = [(label, *(f"{getattr(a, key) / size:.5g} {unit}" for a in accounts)) for label, key in labels.items()]
+    rows.append(("closure: battery - link - loss, of throughput", *(f"{a.residual:.1e}" for a in accounts)))
+    rows.append(("closure with losses computed anew", *(f"{a.recomputed_residual:.1e}" for a in accounts)))
     return rows
-
-
-def sureness(outcome: Outcome) -> list[str]:
-    """Return how sure the answer is: closures, what is not modelled, what a reader is warned of."""
-    worst = max(max(m.energy.residual, m.energy.recomputed_residual) for m in outcome.missions)
-    lines = [f"energy books close to {worst:.0e} of the throughput; the relaxation settled at every step"]
-    lines.append(
-        f"{len(outcome.not_modelled)} mechanisms or temperatures are not modelled for lack of data (listed below)"
-        if outcome.not_modelled
-        else "every mechanism that the installed plugins know has data"
-    )
-    lines += list(outcome.warnings)
-    return lines

@@ -108,7 +108,7 @@ def test_a_folder_of_other_files_is_left_alone(commuter, capsys, tmp_path):
     (tmp_path / "mine").mkdir()
     (tmp_path / "mine" / "letter.txt").write_text("keep")
     assert main(["run", str(commuter / "plan.toml"), "--brief", "--out", str(tmp_path / "mine")]) == 2
-    assert "holds other files" in capsys.readouterr().err
+    assert "holds no earlier results" in capsys.readouterr().err
     assert (tmp_path / "mine" / "letter.txt").read_text() == "keep"
 
 

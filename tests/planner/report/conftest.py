@@ -5,6 +5,7 @@ import dataclasses
 import numpy as np
 import pandas as pd
 import pytest
+
 from tideleg.caution import SafetyFacts, safety
 from tideleg.limits import LimitCheck
 from tideleg.outcome import (
@@ -183,7 +184,7 @@ def failing_outcome():
     hot = check_of("junction temperature", "lower_switch", 171.0, 150.0, "degC", 412.0, used=1.247)
     far = check_of("ripple ratio", "inductor", 1.9, 0.45, "share", used=4.222)
     verdict = "does not hold: ripple ratio of inductor: 190 % against 45 % (145 % too far) and 1 more of 9 limits"
-    rest = tuple(c for c in whole.limits if c.name not in ("ripple ratio",) and c.part != "lower_switch")
+    rest = tuple(c for c in whole.limits if c.name != "ripple ratio" and c.part != "lower_switch")
     return dataclasses.replace(whole, holds=False, verdict=verdict, binding=far, limits=(far, hot, *rest))
 
 
