@@ -116,7 +116,8 @@ class BatteryAnswer(NamedTuple):
 
     voltage, current : at the terminals [V], [A]; mean of the step
     power : terminal power [W]
-    source_voltage, resistance : E and R of the root, RC pairs included, that held in the step [V], [Ω]
+    source_voltage : open-circuit voltage that held in the step [V]
+    resistance : of the root, RC pairs included [Ω]
     soc_start, soc_end : state of charge at both ends of the step [-]
     pair_start, pair_end : (pair, C, S) voltage of each RC pair at both ends of the step [V]
     cause : why the wanted power was not met, a `Cause`
@@ -197,7 +198,8 @@ def answer(
     clipped at its window, exactly, and a step that meets the window carries the mean current that just reaches it.
     """
     discharging = wanted > 0.0
-    voltage, resistance = battery.source(path.soc_middle, discharging)
+    open_circuit, resistance = battery.source(path.soc_middle, discharging)
+    voltage = open_circuit
     for (ohms, constant), start in zip(battery.pairs, path.pair_start, strict=True):
         mean_decay = -np.expm1(-duration / constant) * constant / duration
         voltage = voltage - start * mean_decay
@@ -220,7 +222,7 @@ def answer(
         terminal,
         current,
         terminal * current,
-        voltage,
+        open_circuit,
         resistance,
         soc_start,
         soc_end,

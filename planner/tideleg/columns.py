@@ -80,7 +80,7 @@ def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
         "battery_voltage_v": one(battery.voltage),
         "battery_current_a": one(battery.current),
         "battery_power_w": one(battery.power),
-        "battery_heat_w": one(battery.resistance * battery.current * battery.current),
+        "battery_heat_w": one((battery.source_voltage - battery.voltage) * battery.current),
         "link_voltage_v": one(block.point.link_voltage),
         "link_current_a": one(link_current),
         "duty_ratio": one(operation.duty_ratio),

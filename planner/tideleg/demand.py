@@ -34,6 +34,7 @@ def battery_of(plan: Plan) -> Battery:
         start_soc=low if table.start_soc is None else table.start_soc,
         lowest_soc=low,
         highest_soc=high,
+        pairs=tuple(table.rc_pairs),
         discharge_current_limit=_or_infinite(table.current_limit_discharge),
         charge_current_limit=_or_infinite(table.current_limit_charge),
         lowest_voltage=0.0 if table.voltage_min is None else table.voltage_min,

@@ -247,6 +247,19 @@ def test_what_cannot_be_is_said_with_its_instant(tmp_path, changes, said):
         ideal(tmp_path, rows, **changes)
 
 
+def test_rc_pairs_of_the_plan_reach_the_battery(tmp_path):
+    # At rest before, 100 A held for 20 s by the current limit: V = 400 - 100 (0.05 (1 - (1 - 1/e)) ...) on average.
+    battery = {
+        "open_circuit_voltage": "400 V",
+        "current_limit_discharge": "100 A",
+        "rc_pairs": [["50 mohm", "20 s"]],
+    }
+    outcome = ideal(tmp_path, "time_s,power_w\n0,60000\n20,0\n", battery=battery)
+    mean_rise = 1.0 - (1.0 - np.exp(-1.0))
+    assert outcome.steps["battery_voltage_v"].iloc[0] == pytest.approx(400.0 - 5.0 * mean_rise, rel=1e-9)
+    assert outcome.steps["battery_heat_w"].iloc[0] == pytest.approx(500.0 * mean_rise, rel=1e-6)
+
+
 def test_a_saturation_current_is_held_against_the_peak(tmp_path):
     stage = {**IDEAL["stage"], "inductor": {"inductance": "500 uH", "saturation_current": "105 A"}}
     outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", stage=stage)
