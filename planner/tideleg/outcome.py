@@ -191,6 +191,20 @@ class Change:
 
 
 @dataclass(frozen=True)
+class Coarser:
+    """What the answer becomes on the same profile with neighbouring steps merged: how far its resolution limits it.
+
+    merged : how many steps became one
+    mean_square_change : of the battery current, over its own value [-]
+    greatest_junction_change_k : None where no junction is modelled
+    """
+
+    merged: int
+    mean_square_change: float
+    greatest_junction_change_k: float | None
+
+
+@dataclass(frozen=True)
 class Inputs:
     """What went in, so that a run can be repeated: file -> SHA-256, package -> version, seed (None: no chance)."""
 
@@ -227,6 +241,7 @@ class Outcome:
     rules: tuple[str, ...]
     inputs: Inputs
     plan_file: Path | None = None
+    coarser: tuple[Coarser, ...] = ()
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -271,6 +286,7 @@ class Outcome:
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
+            "resolution": [_plain(one) for one in self.coarser],
             "changes": [_plain(change) for change in self.changes],
             "safety": _plain(self.safety),
             "not_modelled": list(self.not_modelled),

@@ -18,7 +18,7 @@ from tideleg.facts import inputs_of, part_entries, stage_facts
 from tideleg.feasible import refuse_infeasible_rest, refuse_infeasible_steps
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
-from tideleg.mission import Profile
+from tideleg.mission import Profile, coarsened
 from tideleg.outcome import MissionResult, Outcome
 from tideleg.plan import Plan, load_plan
 from tideleg.registry import Registry
@@ -62,7 +62,13 @@ class MissionRun(NamedTuple):
     result: MissionResult
 
 
-def run(plan: Plan | str | Path, *, registry: Registry | None = None, progress: Progress | None = None) -> Outcome:
+def run(
+    plan: Plan | str | Path,
+    *,
+    registry: Registry | None = None,
+    progress: Progress | None = None,
+    merged_steps: int = 1,
+) -> Outcome:
     """Run every mission of a plan through its stage and hold it against its limits.
 
     Parameters
@@ -70,6 +76,7 @@ def run(plan: Plan | str | Path, *, registry: Registry | None = None, progress: 
     plan : Plan, or the path of a plan file
     registry : plugins to use; those installed if None
     progress : called as steps are finished
+    merged_steps : neighbouring steps of every profile to merge into one, for the test of its resolution; 1 for none
 
     Returns
     -------
@@ -88,7 +95,7 @@ def run(plan: Plan | str | Path, *, registry: Registry | None = None, progress: 
     stage = build_stage(plan, registry)
     battery = battery_of(plan)
     _refuse_twin_missions(plan)
-    runs = [_run_mission(plan, index, stage, battery, progress) for index in range(len(plan.mission))]
+    runs = [_run_mission(plan, index, stage, battery, merged_steps, progress) for index in range(len(plan.mission))]
     return _outcome(plan, stage, battery, {r.result.name: r for r in runs})
 
 
@@ -100,9 +107,12 @@ def _refuse_twin_missions(plan: Plan) -> None:
             raise plan.fault(f"mission.{index}.name", what)
 
 
-def _run_mission(plan: Plan, index: int, stage: Stage, battery: Battery, progress: Progress | None) -> MissionRun:
+def _run_mission(
+    plan: Plan, index: int, stage: Stage, battery: Battery, merged_steps: int, progress: Progress | None
+) -> MissionRun:
     table = plan.mission[index]
     profile = profile_of(plan, table)
+    profile = profile if merged_steps == 1 else coarsened(profile, merged_steps)
     demand = demand_of(plan, index, profile, stage)
     refuse_infeasible_rest(stage, battery, demand, profile.name)
     done = None if progress is None else lambda steps: progress(profile.name, steps, len(demand.power))

@@ -245,8 +245,8 @@ def _refuse_unknown_names(plan: Plan, registry: Registry, slots: tuple[Slot, ...
     for name in plan.stage.parts:
         if name not in tables:
             known = ", ".join(sorted(tables))
-            what = f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have; it has {known}"
-            raise plan.fault(f"stage.{name}", what)
+            what = f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have"
+            raise plan.fault(f"stage.{name}", f"{what}; it has {known}")
     models = {m.name for m in registry.loss_models()}
     for name in plan.losses.leave_out:
         if name not in models:

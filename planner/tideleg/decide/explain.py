@@ -1,4 +1,4 @@
-"""What would change the answer: the same missions run again with one thing of the plan changed at a time."""
+"""What would change the answer: the same missions run again with one thing changed at a time, or more coarsely."""
 
 from __future__ import annotations
 
@@ -14,12 +14,15 @@ from tideleg.decide.changes import (
     with_warmer_coolant,
 )
 from tideleg.errors import InputError, NoEquilibriumError
-from tideleg.outcome import Change, Outcome
+from tideleg.outcome import Change, Coarser, Outcome
 from tideleg.plan import Plan
 from tideleg.registry import Registry
 from tideleg.running import Progress, run
 
 WARMER_K = 10.0
+MERGED = (2, 5)
+"""Numbers of neighbouring steps that are merged to test how far the profile's resolution limits the answer."""
+
 AGED_RESISTANCE = 1.7
 """Growth of the battery's resistance at its end of life [-]; common practice, no source."""
 
@@ -27,7 +30,7 @@ AGED_RESISTANCE = 1.7
 def explained(
     plan: Plan, outcome: Outcome, *, registry: Registry | None = None, progress: Progress | None = None
 ) -> Outcome:
-    """Return the outcome with its `changes` filled: one re-run for each change that the plan allows."""
+    """Return the outcome with its `changes` and `coarser` filled: one re-run for each."""
     changes = []
     for words, variant in _variants(plan):
         try:
@@ -39,7 +42,39 @@ def explained(
             changes.append(Change(words, False, f"cannot operate: {error}", None, None, None))
             continue
         changes.append(_change(words, other))
-    return dataclasses.replace(outcome, changes=tuple(changes))
+    coarser = tuple(_coarser(plan, outcome, merged, registry, progress) for merged in MERGED)
+    return dataclasses.replace(outcome, changes=tuple(changes), coarser=tuple(c for c in coarser if c is not None))
+
+
+def _coarser(
+    plan: Plan, outcome: Outcome, merged: int, registry: Registry | None, progress: Progress | None
+) -> Coarser | None:
+    """Run the profile with neighbouring steps merged; None where it is too short to merge or finds no answer."""
+    if all(len(mission.steps) < merged for mission in outcome.missions):
+        return None
+    try:
+        other = run(plan, registry=registry, progress=progress, merged_steps=merged)
+    except (NoEquilibriumError, InputError):
+        return None
+    before, after = _mean_square(outcome), _mean_square(other)
+    hot, less_hot = _hottest_junction(outcome), _hottest_junction(other)
+    moved = None if hot is None or less_hot is None else less_hot - hot
+    return Coarser(merged, 0.0 if before == 0.0 else after / before - 1.0, moved)
+
+
+def _mean_square(outcome: Outcome) -> float:
+    """Return the mean square of the battery current over all missions, weighted by passes a year [A²]."""
+    total = seconds = 0.0
+    for mission in outcome.missions:
+        duration = mission.steps["duration_s"].to_numpy() * mission.passes_per_year
+        total += float((mission.steps["battery_current_a"].to_numpy() ** 2 * duration).sum())
+        seconds += float(duration.sum())
+    return total / seconds
+
+
+def _hottest_junction(outcome: Outcome) -> float | None:
+    switches = {part.name for part in outcome.parts if part.kind == "switch"}
+    return max((t.greatest_degc for t in outcome.thermal if t.part in switches), default=None)
 
 
 def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
@@ -61,7 +96,6 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
 
 
 def _change(words: str, other: Outcome) -> Change:
-    junctions = [t.greatest_degc for t in other.thermal if t.part.endswith("switch")]
     binding = "" if other.binding is None else f"{other.binding.name} of {other.binding.part.replace('_', ' ')}"
     used = None if other.binding is None else other.binding.used
-    return Change(words, other.holds, binding, used, max(junctions, default=None), other.efficiency)
+    return Change(words, other.holds, binding, used, _hottest_junction(other), other.efficiency)

@@ -1,5 +1,6 @@
 """Profiles in: reading, road load, and what is in them."""
 
+from tideleg.mission.coarsen import coarsened
 from tideleg.mission.passport import Passport, passport
 from tideleg.mission.profile import Profile
 from tideleg.mission.reading import read_profile
@@ -12,6 +13,7 @@ __all__ = [
     "Vehicle",
     "Wheel",
     "at_wheels",
+    "coarsened",
     "passport",
     "read_profile",
     "stage_power",

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tideleg.limits import LimitCheck
-from tideleg.outcome import Change, Outcome
+from tideleg.outcome import Change, Coarser, Outcome
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
@@ -140,6 +140,10 @@ def closure(outcome: Outcome) -> float:
     return max(max(abs(e.residual), abs(e.recomputed_residual)) for e in energies)
 
 
+RESOLVED_SHARE, RESOLVED_K = 0.01, 1.0
+"""A merged profile that moves the answer by more than this share or this many kelvin was needed as fine as it is."""
+
+
 def sureness(outcome: Outcome) -> list[str]:
     """Return how sure the answer is: closures, passes of the relaxation, loop gain, what a reader is warned of."""
     passes = max(m.passes for m in outcome.missions)
@@ -154,8 +158,20 @@ def sureness(outcome: Outcome) -> list[str]:
         )
     else:
         lines.append("no temperature is modelled")
+    lines += [_resolution(one) for one in outcome.coarser]
     lines += [f"warning: {warning}" for warning in outcome.warnings]
     return lines
+
+
+def _resolution(one: Coarser) -> str:
+    """Return one resolution test in words; a profile that still moves the answer is too coarse to be the last word."""
+    moves = [f"the mean square battery current moves by {100.0 * one.mean_square_change:+.2f} %"]
+    strong = abs(one.mean_square_change) > RESOLVED_SHARE
+    if one.greatest_junction_change_k is not None:
+        moves.append(f"the hottest junction by {one.greatest_junction_change_k:+.2f} K")
+        strong = strong or abs(one.greatest_junction_change_k) > RESOLVED_K
+    verdict = "the profile's own steps limit this answer" if strong else "the profile resolves this answer"
+    return f"with every {one.merged} steps merged {' and '.join(moves)}: {verdict}"
 
 
 def all_rules(outcome: Outcome) -> list[str]:
