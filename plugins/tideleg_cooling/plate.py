@@ -41,6 +41,11 @@ class PlateSettings(BaseModel):
         missing = [key for key in keys if getattr(self, key) is None]
         if 0 < len(missing) < len(keys):
             raise ValueError(f"{missing[0]} is missing: the coolant's rise needs {', '.join(keys)}")
+        if missing and "reference" in self.model_fields_set and self.reference != "inlet":
+            raise ValueError(
+                f"reference: found {self.reference!r} without {', '.join(keys)}: the rise from the inlet is not known;"
+                " give them, or leave reference out and the coolant keeps its inlet temperature"
+            )
         return self
 
     def coolant_rise_per_watt(self) -> float:
@@ -50,16 +55,26 @@ class PlateSettings(BaseModel):
         return 1.0 / (self.coolant_density * self.coolant_specific_heat * self.coolant_flow)
 
 
+Cell = tuple[Annotated[quantity.ThermalResistance, Field(gt=0.0)], Annotated[quantity.Time, Field(ge=0.0)]]
+"""One Foster cell: resistance [K/W] and time constant [s]; zero follows at once."""
+
+
 class SwitchSeat(BaseModel):
     """Keys of [stage.switch]: Foster cells of ONE chip from junction to plate, and an interface in series."""
 
     model_config = ConfigDict(extra="forbid")
 
-    junction_to_plate: (
-        tuple[tuple[Annotated[quantity.ThermalResistance, Field(gt=0.0)], Annotated[quantity.Time, Field(ge=0.0)]], ...]
-        | None
-    ) = None
+    junction_to_plate: Annotated[tuple[Cell, ...], Field(min_length=1)] | None = None
     interface_resistance: Annotated[quantity.ThermalResistance, Field(ge=0.0)] | None = None
+
+    @model_validator(mode="after")
+    def _interface_has_a_chain(self) -> Self:
+        if self.interface_resistance is not None and self.junction_to_plate is None:
+            raise ValueError(
+                "interface_resistance stands alone: it is in series with junction_to_plate; give that too,"
+                " such as junction_to_plate = [['0.12 K/W', '20 ms']]"
+            )
+        return self
 
 
 class InductorSeat(BaseModel):
@@ -70,6 +85,16 @@ class InductorSeat(BaseModel):
     thermal_resistance: Annotated[quantity.ThermalResistance, Field(gt=0.0)] | None = None
     thermal_time_constant: Annotated[quantity.Time, Field(ge=0.0)] = 0.0
     cooled_by: Literal["plate", "ambient"] = "plate"
+
+    @model_validator(mode="after")
+    def _has_a_resistance(self) -> Self:
+        given = self.model_fields_set & {"thermal_time_constant", "cooled_by"}
+        if self.thermal_resistance is None and given:
+            raise ValueError(
+                f"thermal_resistance is missing: {', '.join(sorted(given))} alone leave the temperature unknown;"
+                " give it, such as thermal_resistance = '0.4 K/W'"
+            )
+        return self
 
 
 class CapacitorSeat(InductorSeat):

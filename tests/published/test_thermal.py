@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 
 from tideleg import Mass, Network, Path, Seat
-from tideleg.heat import Propagator, modes
+from tideleg.heat import Propagator, cauer_to_foster, foster_to_cauer, modes
 
 ILLUSTRATIVE = ((0.008, 0.001), (0.025, 0.02), (0.035, 0.2), (0.012, 1.0))
 
@@ -40,8 +40,10 @@ def step_response(solved, time):
         ("TH-01", "found", (0.4, 0.1, 0.5), 125.0, 25.0, 150.0, 1e-6),
         # TH-03 found: electronics lab heat-sink hand-out: case 76 degC (75.7), junction 88 degC (87.887); print rounding.
         ("TH-03", "found", (3.125, 13.0), 3.9, 25.0, 88.0, 4e-3),
-        # TH-04 found: hobby course on heat sinks: Rth_ca 1.4 K/W holds 200 degC at 60 W (exact 1.4167 K/W); print rounding.
-        ("TH-04", "found", (1.5, 1.4167), 60.0, 25.0, 200.0, 0.02),
+        # TH-04 found: hobby course on heat sinks: Rth_ca 1.4 K/W holds 200 degC at 60 W; print rounding of 1 K.
+        ("TH-04", "found", (1.5, 1.4), 60.0, 25.0, 200.0, 0.006),
+        # ... and without the rounding 17/12 K/W, which is exact.
+        ("TH-04", "closed form", (1.5, 17.0 / 12.0), 60.0, 25.0, 200.0, 1e-9),
     ],
 )
 def test_series_chain_at_rest(row, source, resistances, power, ambient, junction, tolerance):
@@ -160,6 +162,9 @@ def test_th_12_foster_and_cauer_of_two_cells_are_one_network():
     cauer = ladder((0.8276873, 0.1723127), (0.9090909, 16.19677))
     for time in (0.01, 0.3, 2.0, 30.0):
         assert step_response(cauer, time) == pytest.approx(step_response(foster, time), rel=1e-6)
+    np.testing.assert_allclose(np.sort(cauer.time_constants), [0.7, 3.0], rtol=1e-6)
+    converted = foster_to_cauer([(0.7, 0.7), (0.3, 3.0)])
+    np.testing.assert_allclose(converted, [(0.8276873, 0.9090909), (0.1723127, 16.19677)], rtol=1e-6)
 
 
 def test_th_13_cauer_to_foster_by_its_modes():
@@ -169,6 +174,8 @@ def test_th_13_cauer_to_foster_by_its_modes():
     np.testing.assert_allclose(solved.time_constants[order], [0.02147802, 0.3405026, 3.938019], rtol=1e-6)
     resistances = (solved.output[0] * solved.gain[:, 0])[order]
     np.testing.assert_allclose(resistances, [0.05040605, 0.2020887, 1.547505], rtol=1e-6)
+    cells = cauer_to_foster([(0.1, 0.3), (0.5, 0.8), (1.2, 2.0)])
+    np.testing.assert_allclose(cells, np.column_stack([resistances, solved.time_constants[order]]), rtol=1e-12)
 
 
 def test_th_14_electro_thermal_fixed_point_and_runaway():
