@@ -1,4 +1,4 @@
-"""Thermal networks against textbook, lecture-hall and closed-form values, through the solver itself.
+"""Thermal networks against textbook, course and closed-form values, through the solver itself.
 
 Status of each row: "found" - value and inputs seen in the source; "found inputs" - inputs seen, value computed from the
 exact formula; "closed form" - exact mathematics; "from memory" - a known value whose source was not at hand.
@@ -63,7 +63,7 @@ def test_th_01_case_temperature():
 
 
 def test_th_02_two_devices_share_the_sink_and_only_the_sink():
-    # Found: lecture slides "Two devices on a common heat sink": shared sink 1.5 K/W where one alone could have 3 K/W.
+    # Found: course slides "Two devices on a common heat sink": shared sink 1.5 K/W where one alone could have 3 K/W.
     seats = tuple(Seat(name, "sink", ((1.5, 0.1), (0.5, 0.1))) for name in ("one", "two"))
     shared = modes(Network(("coolant",), (Mass("sink", 10.0),), (Path("sink", "coolant", 1.5),), seats))
     np.testing.assert_allclose(shared.steady(np.full((2, 1), 20.0), np.array([[50.0]])), 150.0, rtol=1e-6)
