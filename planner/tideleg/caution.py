@@ -27,6 +27,14 @@ NOTES = (
 """How the numbers are found, in words that any output can print."""
 
 
+GENERAL_SENTENCES = (
+    "HIGH VOLTAGE: a stage between a battery and a link carries voltages and stored energy that kill.",
+    "Only licensed or qualified persons work on this equipment, under the local code and the rules of the site.",
+    "All numbers here are planning estimates; they are no statement of compliance with any standard.",
+)
+"""The caution where no design was found and so no numbers of its own exist."""
+
+
 @dataclass(frozen=True)
 class SafetyFacts:
     """What the caution needs to know about a design.

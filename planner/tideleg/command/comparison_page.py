@@ -5,7 +5,11 @@ from __future__ import annotations
 import json
 from typing import TYPE_CHECKING
 
+from rich.markup import escape
 from rich.table import Table
+from rich.text import Text
+
+from tideleg.caution import GENERAL_SENTENCES
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -15,10 +19,10 @@ if TYPE_CHECKING:
 
 def print_comparison(found: Comparison, console: Console) -> None:
     """Print the answers side by side, then what each stage was given to spend, then the caution."""
-    labels = [contender.label for contender in found.contenders]
+    labels = [escape(contender.label) for contender in found.contenders]
     answers = Table("", *labels, title="The same missions, stage by stage", title_justify="left")
     for row, cells in _answers(found).items():
-        answers.add_row(row, *cells)
+        answers.add_row(row, *(Text(cell) for cell in cells))
     console.print(answers)
     fairness = Table(
         "", *labels, "", title="What each was given: differing rows bend the comparison", title_justify="left"
@@ -29,13 +33,11 @@ def print_comparison(found: Comparison, console: Console) -> None:
     console.print(fairness)
     for contender in found.contenders:
         for note in contender.adaptations:
-            console.print(f"{contender.label}: {note}", soft_wrap=True)
-    for contender in found.contenders:
-        if contender.outcome is not None:
-            console.print()
-            for sentence in contender.outcome.safety.sentences:
-                console.print(sentence, soft_wrap=True)
-            break
+            console.print(f"{contender.label}: {note}", soft_wrap=True, markup=False)
+    console.print()
+    outcomes = [contender.outcome for contender in found.contenders if contender.outcome is not None]
+    for sentence in outcomes[0].safety.sentences if outcomes else GENERAL_SENTENCES:
+        console.print(sentence, soft_wrap=True, markup=False)
 
 
 def _answers(found: Comparison) -> dict[str, list[str]]:
@@ -73,6 +75,7 @@ def comparison_json(found: Comparison) -> str:
         {
             "label": c.label,
             "fault": c.fault or None,
+            "caution": list(GENERAL_SENTENCES if c.outcome is None else c.outcome.safety.sentences),
             "fairness": dict(c.fairness),
             "adaptations": list(c.adaptations),
             "summary": None if c.outcome is None else c.outcome.summary(),

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from rich.table import Table
+from rich.text import Text
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -14,10 +15,10 @@ if TYPE_CHECKING:
 
 def print_passport(profile: Profile, found: Passport, console: Console) -> None:
     """Print what is in a profile, and how it was read."""
-    table = Table("", "", title=f"Profile {profile.name}", title_justify="left", show_header=False)
+    table = Table("", "", title=Text(f"Profile {profile.name}"), title_justify="left", show_header=False)
     for label, text in found.rows():
         table.add_row(label, text)
     console.print(table)
     console.print("How it was read:")
     for rule in profile.rules:
-        console.print(f"  {rule}", soft_wrap=True)
+        console.print(f"  {rule}", soft_wrap=True, markup=False)

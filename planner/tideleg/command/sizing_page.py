@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from rich.table import Table
+from rich.text import Text
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -18,8 +19,9 @@ def print_sizing(sized: Sized, console: Console) -> None:
     for head in ("value", "was", "now", "set by", "at"):
         table.add_column(head, overflow="fold")
     for decision in sized.decisions:
-        table.add_row(decision.key, decision.before or "not given", str(decision.value), decision.set_by, decision.at)
+        cells = (decision.key, decision.before or "not given", str(decision.value), decision.set_by, decision.at)
+        table.add_row(*(Text(cell) for cell in cells))
     console.print()
     console.print(table)
     for note in sized.notes:
-        console.print(f"  {note}", soft_wrap=True)
+        console.print(f"  {note}", soft_wrap=True, markup=False)

@@ -70,8 +70,10 @@ def _with_plate(
     trial = trial.decided(plan, Decision("stage.switch.in_parallel", chips, before, _words(checks[0]), at))
     if resistance is not None:
         text = format_quantity(resistance, "thermal resistance")
+        at_end = plate_range is not None and resistance >= plate_range[1]
+        set_by = "end of [size] plate_resistance_range: every temperature holds" if at_end else _words(checks[0])
         plan = with_cooling(plan, plate_resistance=text)
-        trial = trial.decided(plan, Decision("cooling.plate_resistance", text, given, _words(checks[0]), at))
+        trial = trial.decided(plan, Decision("cooling.plate_resistance", text, given, set_by, "" if at_end else at))
     return trial
 
 

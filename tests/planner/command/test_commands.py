@@ -171,6 +171,8 @@ def test_compare_from_the_command_line(capsys, commuter):
 
 def test_size_from_the_command_line_writes_a_plan_that_runs(capsys, commuter):
     assert main(["size", str(commuter / "plan.toml"), "--enforce"]) == 0
-    assert "set by" in capsys.readouterr().out
+    shown = capsys.readouterr().out
+    assert "set by" in shown
+    assert "battery capacitance kept" in shown
     assert main(["run", str(commuter / "sized" / "sized.toml"), "--brief", "--enforce"]) == 0
     assert sorted(p.name for p in commuter.iterdir() if p.name.startswith(".")) == []
