@@ -124,7 +124,9 @@ def _inductor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray])
 def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
     name = part.slot.name
     exchange = block.checked.operation.exchanges[name]
-    columns = {f"{name}.current_rms_a": one(exchange.current.ac_rms())}
+    others = getattr(part.base, "external_ripple_current", None) or 0.0
+    # Ripple of others on the port has no fixed phase to the stage's own: it adds in squares.
+    columns = {f"{name}.current_rms_a": one(np.sqrt(exchange.current.ac_mean_square() + others * others))}
     if part.base is not None and part.base.capacitance is not None:
         swing = exchange.current.charge_swing() / exchange.frequency
         columns[f"{name}.voltage_ripple_v"] = one(swing / part.base.capacitance)

@@ -260,6 +260,14 @@ def test_rc_pairs_of_the_plan_reach_the_battery(tmp_path):
     assert outcome.steps["battery_heat_w"].iloc[0] == pytest.approx(500.0 * mean_rise, rel=1e-6)
 
 
+def test_ripple_of_others_on_the_port_counts_in_the_capacitors_current(tmp_path):
+    stage = {**IDEAL["stage"], "link_capacitor": {"external_ripple_current": "30 A", "rated_current": "55 A"}}
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", stage=stage)
+    check = next(c for c in outcome.limits if c.name == "link capacitor current")
+    assert check.value == pytest.approx(np.sqrt(2500 + 400 / 24 + 900))
+    assert not check.holds
+
+
 def test_a_saturation_current_is_held_against_the_peak(tmp_path):
     stage = {**IDEAL["stage"], "inductor": {"inductance": "500 uH", "saturation_current": "105 A"}}
     outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", stage=stage)

@@ -182,6 +182,7 @@ class CapacitorBase(Table):
     capacitance: Annotated[q.Capacitance, Positive] | None = None
     rated_voltage: Annotated[q.Voltage, Positive] | None = None
     rated_current: Annotated[q.Current, Positive] | None = None
+    external_ripple_current: Annotated[q.Current, NotNegative] | None = None
 
 
 class MissionTable(Table):
