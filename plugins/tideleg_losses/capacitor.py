@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Annotated, Self
+from typing import Annotated
 
 import numpy as np
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import BaseModel, ConfigDict, Field
 
 from tideleg import Exchange, FloatArray, Line, LossTerm, PartKind, Timing, Values, hookimpl, quantity
-from tideleg_losses.shared_keys import refuse_keys_without
 
 
 class CapacitorSettings(BaseModel):
@@ -19,11 +18,6 @@ class CapacitorSettings(BaseModel):
 
     esr: Annotated[quantity.Resistance, Field(ge=0.0)] | None = None
     external_ripple_current: Annotated[quantity.Current, Field(ge=0.0)] | None = None
-
-    @model_validator(mode="after")
-    def _has_a_resistance(self) -> Self:
-        refuse_keys_without(self, ("esr",), ("external_ripple_current",))
-        return self
 
 
 def esr_from_dissipation(dissipation_factor: Values, frequency: Values, capacitance: Values) -> Values:

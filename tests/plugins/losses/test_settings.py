@@ -7,7 +7,7 @@ from typing import Any
 import pytest
 from pydantic import BaseModel, ValidationError
 
-from tideleg_losses import busbar, capacitor, channel, core, dead_time, gate, output_charge, recovery, standby
+from tideleg_losses import busbar, channel, core, dead_time, gate, output_charge, recovery, standby
 from tideleg_losses import switching as switching_plugin
 from tideleg_losses import winding as winding_plugin
 
@@ -56,7 +56,6 @@ REFUSED: list[tuple[type[BaseModel], dict[str, Any], str]] = [
     (wd, {"winding_resistance": 0.01, "ac_resistance_ratio": [[1e5, 0.9], [1e6, 2]]}, "greater than or equal to 1"),
     (core.CoreSettings, {**STEINMETZ, "core_area": 1e-3, "turns": 16}, "core_volume is missing"),
     (core.CoreSettings, {"core_area": 1e-3}, "core_k is missing"),
-    (capacitor.CapacitorSettings, {"external_ripple_current": 20.0}, "esr is missing"),
     (busbar.BusbarSettings, {"battery_side_resistance": -1.0}, "greater than or equal to 0"),
     (standby.StandbySettings, {"standby_power": "18 V"}, "unit of voltage"),
 ]
