@@ -55,6 +55,7 @@ class BatteryTable(Table):
             raise ValueError("open_circuit_voltage must be above zero everywhere")
         if any(curve is not None and min(curve.value) < 0.0 for curve in curves[1:]):
             raise ValueError("resistance must not be negative")
+        self._limits_leave_room()
         for curve in curves:
             if curve is not None and len(curve.soc) > 1 and (curve.soc[0] > low or curve.soc[-1] < high):
                 raise ValueError(
@@ -62,6 +63,18 @@ class BatteryTable(Table):
                     f" soc_window [{low:g}, {high:g}]; nothing is extrapolated: add points or narrow the window"
                 )
         return self
+
+    def _limits_leave_room(self) -> None:
+        """Refuse voltage limits that the resting battery passes at every state of charge: it could never work."""
+        lowest, highest = min(self.open_circuit_voltage.value), max(self.open_circuit_voltage.value)
+        if self.voltage_max is not None and self.voltage_max <= lowest:
+            raise ValueError(
+                f"voltage_max: found {self.voltage_max:g} V, below every open-circuit voltage ({lowest:g} V)"
+            )
+        if self.voltage_min is not None and self.voltage_min >= highest:
+            raise ValueError(
+                f"voltage_min: found {self.voltage_min:g} V, above every open-circuit voltage ({highest:g} V)"
+            )
 
 
 class LinkTable(Table):

@@ -75,6 +75,16 @@ def test_a_good_plan_is_read_in_base_units(plan_file):
         ("start_soc = 0.6", "", "start_soc is missing"),
         ('capacity = "180 Ah"', "", "capacity is missing"),
         ("[0, ", "[0.2, ", "nothing is extrapolated"),
+        (
+            "start_soc = 0.6",
+            'start_soc = 0.6\nvoltage_max = "320 V"',
+            "voltage_max: found 320 V, below the battery at rest",
+        ),
+        (
+            "start_soc = 0.6",
+            'start_soc = 0.6\nvoltage_min = "460 V"',
+            "voltage_min: found 460 V, above the battery at rest",
+        ),
         ('"750 V"', '"-750 V"', r"line 9, link.voltage"),
         ('"p.csv"', '"q.csv"', r"line 24, mission.0.profile: found 'q.csv', which is no file"),
         ("[link]", "[lnk]", r"the table \[link\] is missing"),
@@ -218,6 +228,24 @@ def test_the_schema_is_one_of_draft_2020_12_and_knows_every_plugin_key():
     assert {"on_resistance", "gate_charge", "junction_to_plate", "in_parallel"} <= set(stage["switch"]["properties"])
     assert "inductance" in stage["inductor"]["properties"]
     assert "plate_resistance" in schema["$defs"]["CoolingTable"]["properties"]
+
+
+@pytest.mark.parametrize("name", ["kerbside", "orchard", "commuter"])
+def test_the_schema_accepts_every_shipped_plan_and_refuses_a_slip(name):
+    import tomllib
+    from pathlib import Path
+
+    import jsonschema
+
+    r = installed()
+    schema = plan_schema(r.topologies(), r.loss_models(), r.cooling_models())
+    jsonschema.Draft202012Validator.check_schema(schema)
+    validator = jsonschema.Draft202012Validator(schema)
+    file = Path(__file__).parents[3] / "profiles" / name / "plan.toml"
+    data = tomllib.loads(file.read_text(encoding="utf-8"))
+    assert [error.message for error in validator.iter_errors(data)] == []
+    data["stage"]["legz"] = 3
+    assert not validator.is_valid(data)
 
 
 def test_one_table_shared_by_models_refuses_what_nobody_declares(plan_file):
