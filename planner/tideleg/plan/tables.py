@@ -69,11 +69,11 @@ class BatteryTable(Table):
         lowest, highest = min(self.open_circuit_voltage.value), max(self.open_circuit_voltage.value)
         if self.voltage_max is not None and self.voltage_max <= lowest:
             raise ValueError(
-                f"voltage_max: found {self.voltage_max:g} V, below every open-circuit voltage ({lowest:g} V)"
+                f"voltage_max: found {self.voltage_max:g} V, below the battery at rest ({lowest:g} V and more)"
             )
         if self.voltage_min is not None and self.voltage_min >= highest:
             raise ValueError(
-                f"voltage_min: found {self.voltage_min:g} V, above every open-circuit voltage ({highest:g} V)"
+                f"voltage_min: found {self.voltage_min:g} V, above the battery at rest (at most {highest:g} V)"
             )
 
 
