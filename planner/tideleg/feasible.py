@@ -29,6 +29,29 @@ def refuse_infeasible_rest(stage: Stage, battery: Battery, demand: Demand, missi
     _refuse(stage, reason, point, demand, 0, mission)
 
 
+def refuse_impossible_power(battery: Battery, demand: Demand, mission: str) -> None:
+    """Refuse a request that the battery could give at no state of charge: most likely a slip of the unit.
+
+    Raises
+    ------
+    InputError
+        With the first instant, the power asked, and the greatest that E²/(4 R) ever allows.
+    """
+    ohms = battery.discharge_resistance
+    if np.any(ohms <= 0.0):
+        return
+    greatest = float(np.max(battery.open_circuit_voltage**2 / (4.0 * ohms)))
+    over = demand.allowed > greatest
+    if np.any(over):
+        step = int(np.argmax(over))
+        time = float(demand.duration[:step].sum())
+        raise InputError(
+            f"mission {mission!r}, {time:g} s: {demand.power[step]:.4g} W is asked, more than the battery could give at"
+            f" any state of charge (E²/4R = {greatest:.4g} W). Check the unit of the profile (W, kW, MW) and the"
+            " battery's resistance"
+        )
+
+
 def refuse_infeasible_steps(stage: Stage, demand: Demand, blocks: list[Settled], mission: str) -> None:
     """Refuse a mission in which the stage could not operate at some step; raises as `refuse_infeasible_rest`."""
     begin = 0

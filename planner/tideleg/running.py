@@ -15,7 +15,7 @@ from tideleg.columns import steps_frame
 from tideleg.demand import battery_of, demand_of, profile_of
 from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
-from tideleg.feasible import refuse_infeasible_rest, refuse_infeasible_steps
+from tideleg.feasible import refuse_impossible_power, refuse_infeasible_rest, refuse_infeasible_steps
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
@@ -114,6 +114,7 @@ def _run_mission(
     profile = profile_of(plan, table)
     profile = profile if merged_steps == 1 else coarsened(profile, merged_steps)
     demand = demand_of(plan, index, profile, stage)
+    refuse_impossible_power(battery, demand, profile.name)
     refuse_infeasible_rest(stage, battery, demand, profile.name)
     done = None if progress is None else lambda steps: progress(profile.name, steps, len(demand.power))
     blocks = _march_from(stage, battery, demand, table.start, done)

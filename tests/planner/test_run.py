@@ -235,6 +235,13 @@ def test_curtailment_fails_a_mission_unless_it_is_allowed(tmp_path):
         ),
         ({"battery": {"open_circuit_voltage": "795 V", "resistance": "0.2 ohm"}}, "cannot operate"),
         ({"stage": {**IDEAL["stage"], "topology": "quarter-bridge"}}, "no topology plugin named 'quarter-bridge'"),
+        (
+            {
+                "battery": {"open_circuit_voltage": "400 V", "resistance": "2 ohm"},
+                "mission": [{"profile": "p.csv", "sign": "charge"}],
+            },
+            "more than the battery could give",
+        ),
         ({"limits": {"junction_temperature": "10 degC"}}, None),
     ],
 )

@@ -83,10 +83,18 @@ def size(
             break
     proven = trial.plan
     if destination is not None:
-        heading = "Sized by tideleg from the limits and missions of this plan; a planning estimate, no release."
-        write_plan(plan, _values(trial), destination, heading)
+        write_plan(plan, _values(trial), destination, _heading(trial))
         proven = load_plan(destination)
     return Sized(tuple(trial.decisions.values()), proven, run(proven, registry=known, progress=progress), trial.notes)
+
+
+def _heading(trial: Trial) -> str:
+    """Return the comment on top of the sized plan: every value, what set it, and what was left alone."""
+    lines = ["Sized by tideleg from the limits and missions of this plan; a planning estimate, no release.", ""]
+    for decision in trial.decisions.values():
+        at = f", at {decision.at}" if decision.at else ""
+        lines.append(f"{decision.key} = {decision.value} (was {decision.before or 'not given'}): {decision.set_by}{at}")
+    return "\n".join([*lines, *trial.notes, ""])
 
 
 def _values(trial: Trial) -> dict[str, str | int]:

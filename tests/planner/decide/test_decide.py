@@ -37,6 +37,8 @@ def test_a_sized_stage_holds_and_each_value_says_what_set_it(commuter, tmp_path)
     assert keys["stage.legs"].before == "7"
     assert all(d.set_by for d in sized.decisions)
     assert "of wltc_class3b" in keys["stage.inductor.inductance"].at
+    heading = (tmp_path / "out" / "sized.toml").read_text().split("title")[0]
+    assert "# stage.legs = 2 (was 7): leg current" in heading
     again = run(tmp_path / "out" / "sized.toml")
     assert again.holds
     tight = {c.name: c.used for c in reversed(again.limits)}  # the tightest of each name
