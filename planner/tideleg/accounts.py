@@ -30,6 +30,9 @@ def energy_account(demand: Demand, blocks: list[Settled], steps: pd.DataFrame) -
     battery = steps["battery_power_w"].to_numpy()
     loss = steps["loss_w"].to_numpy()
     checked = np.concatenate([block.checked.total[0] for block in blocks])
+    # What runs against the request (the link keeping an idle stage alive) is loss, not more curtailment.
+    wanted = np.abs(demand.power)
+    along = np.maximum(np.sign(demand.power) * (demand.power - steps["curtailed_w"].to_numpy()), 0.0)
     throughput = energy(np.abs(battery))
     scale = throughput if throughput > 0.0 else 1.0
     return EnergyAccount(
@@ -39,8 +42,8 @@ def energy_account(demand: Demand, blocks: list[Settled], steps: pd.DataFrame) -
         battery_in_j=energy(np.maximum(-battery, 0.0)),
         loss_j=energy(loss),
         battery_heat_j=energy(steps["battery_heat_w"].to_numpy()),
-        curtailed_j=energy(np.abs(steps["curtailed_w"].to_numpy())),
-        requested_j=energy(np.abs(demand.power)),
+        curtailed_j=energy(wanted - along),
+        requested_j=energy(wanted),
         throughput_j=throughput,
         residual=energy(np.abs(battery - link - loss)) / scale,
         recomputed_residual=energy(np.abs(battery - link - checked)) / scale,

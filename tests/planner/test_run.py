@@ -226,6 +226,16 @@ def test_curtailment_fails_a_mission_unless_it_is_allowed(tmp_path):
     assert ideal(tmp_path, rows, battery=battery, limits={"curtailed_energy": "60 %"}).holds
 
 
+def test_an_empty_battery_curtails_all_that_was_asked_and_no_more(tmp_path):
+    battery = {"open_circuit_voltage": "400 V", "capacity": "1 Ah", "start_soc": 0.0}
+    stage = {**IDEAL["stage"], "control": {"standby_power": "50 W"}}
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n60,0\n", battery=battery, stage=stage)
+    energy = outcome.missions[0].energy
+    assert energy.curtailed_j == energy.requested_j == 40000.0 * 60
+    assert energy.link_in_j == pytest.approx(50.0 * 60)  # the link keeps the control alive
+    assert outcome.steps["curtailed_cause"].tolist() == ["lowest state of charge"]
+
+
 @pytest.mark.parametrize(
     ("changes", "said"),
     [
