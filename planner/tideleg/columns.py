@@ -79,13 +79,13 @@ def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
         "soc": one(battery.soc_end),
         "battery_voltage_v": one(battery.voltage),
         "battery_current_a": one(battery.current),
-        "battery_power_w": one(battery.power),
-        "battery_heat_w": one((battery.source_voltage - battery.voltage) * battery.current),
         "link_voltage_v": one(block.point.link_voltage),
         "link_current_a": one(link_current),
         "duty_ratio": one(operation.duty_ratio),
-        "switching_frequency_hz": one(operation.timing.frequency),
         "loss_w": one(block.losses.total),
+        "battery_power_w": one(battery.power),
+        "battery_heat_w": one((battery.source_voltage - battery.voltage) * battery.current),
+        "switching_frequency_hz": one(operation.timing.frequency),
     }
     for part in stage.parts:
         if part.slot.kind in _READERS:

@@ -64,7 +64,7 @@ def test_the_books_of_every_scenario_close_below_a_billionth(outcomes, name):
 def test_the_table_of_steps_has_its_columns_and_is_finite(outcomes):
     steps = outcomes["kerbside"].steps
     assert set(COLUMNS) <= set(steps.columns)
-    assert list(steps.columns[:3]) == COLUMNS[:3]
+    assert list(steps.columns[:15]) == COLUMNS[:15]
     numbers = steps.select_dtypes("number").to_numpy()
     assert np.isfinite(numbers).all()
     assert set(steps["direction"]) == {"charge", "discharge"}
