@@ -50,6 +50,7 @@ class SafetyFacts:
     inductance_per_leg_h : at the working current [H]
     legs : how many
     greatest_discharge_w : greatest power into the link, which a load dump leaves without a load [W]
+    link_fed_through_diodes : whether the battery feeds the link through diodes while every gate is off
     discharge_to_v, discharge_within_s : the wanted discharge; a person's choice, since rules differ [V], [s]
     """
 
@@ -67,6 +68,7 @@ class SafetyFacts:
     greatest_discharge_w: float
     discharge_to_v: float = CLASS_A_LIMIT_V
     discharge_within_s: float = DISCHARGE_SECONDS
+    link_fed_through_diodes: bool = True
 
 
 @dataclass(frozen=True)
@@ -201,7 +203,7 @@ def _refuse_meaningless(facts: SafetyFacts) -> None:
     may_be_zero = {"battery_resistance_ohm", "path_resistance_ohm", "greatest_discharge_w"}
     for field in dataclasses.fields(facts):
         value = getattr(facts, field.name)
-        if value is None:
+        if value is None or isinstance(value, bool):
             continue
         if not math.isfinite(value) or value < 0.0 or (value == 0.0 and field.name not in may_be_zero):
             least = "zero or more" if field.name in may_be_zero else "more than zero"
@@ -279,15 +281,26 @@ def _energy_sentence(facts: SafetyFacts, n: Safety) -> str:
     )
     if n.discharge_resistor_ohm is None:
         return f"{text} It never stands above {n.discharge_to_v:g} V."
+    first = ""
+    if facts.link_fed_through_diodes:
+        first = (
+            " It can do so only once the battery is disconnected: until then the upper diodes hold the link at battery"
+            " voltage."
+        )
     return (
         f"{text} A resistor of at most {n.discharge_resistor_ohm:.4g} ohm brings it to {n.discharge_to_v:g} V in"
         f" {n.discharge_within_s:g} s, would lose {n.discharge_resistor_loss_w:.4g} W if always connected, and leaves"
-        f" {n.energy_left_j:.3g} J. It can do so only once the battery is disconnected: until then the upper diodes"
-        " hold the link at battery voltage."
+        f" {n.energy_left_j:.3g} J.{first}"
     )
 
 
 def _short_sentence(facts: SafetyFacts, n: Safety) -> str:
+    if not facts.link_fed_through_diodes:
+        return (
+            "A short of the link discharges its capacitors and inductors into the fault. With every gate off no diode"
+            " of this topology feeds it from the battery, but a failed switch can: a fuse and a contactor rated for the"
+            " battery's own short current must interrupt that."
+        )
     size = "a current that the given data do not bound (no battery or path resistance)"
     if n.link_short_current_a is not None:
         within = "" if facts.path_resistance_ohm > 0.0 else " (bounded here by the battery's resistance alone)"

@@ -22,6 +22,9 @@ if TYPE_CHECKING:
 
 Columns = dict[str, "FloatArray"]
 
+PORT_CAPACITORS = ("battery_capacitor", "link_capacitor")
+"""Their voltage is that of the port, which has a column of its own."""
+
 DIRECTIONS = ("charge", "idle", "discharge")
 
 
@@ -127,6 +130,8 @@ def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]
     others = getattr(part.base, "external_ripple_current", None) or 0.0
     # Ripple of others on the port has no fixed phase to the stage's own: it adds in squares.
     columns = {f"{name}.current_rms_a": one(np.sqrt(exchange.current.ac_mean_square() + others * others))}
+    if name not in PORT_CAPACITORS:
+        columns[f"{name}.voltage_v"] = one(exchange.voltage)
     if part.base is not None and part.base.capacitance is not None:
         swing = exchange.current.charge_swing() / exchange.frequency
         columns[f"{name}.voltage_ripple_v"] = one(swing / part.base.capacitance)

@@ -169,7 +169,11 @@ class Slot(NamedTuple):
 
 @runtime_checkable
 class Topology(Protocol):
-    """A circuit: states the waveforms of a stage in both power directions."""
+    """A circuit: states the waveforms of a stage in both power directions.
+
+    A topology whose diodes cannot carry battery current into the link while every gate is off says so with an
+    attribute `feeds_link_through_diodes = False`; without it the caution warns of that path.
+    """
 
     @property
     def name(self) -> str:

@@ -145,7 +145,7 @@ def _voltage_checks(limits: LimitsTable, stage: Stage, trip_voltage: float | Non
                 value, *when = _greatest(seen, f"{name}.voltage_ripple_v")
                 yield _upper(f"{port} voltage ripple", name, value, limit, "V", when)
             if rated is not None:
-                column = f"{port}_voltage_v"
+                column = f"{port}_voltage_v" if port in ("battery", "link") else f"{name}.voltage_v"
                 value, *when = _greatest(seen, column)
                 yield _upper("capacitor voltage", name, value, rated, "V", when)
 

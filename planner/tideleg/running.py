@@ -227,5 +227,6 @@ def _safety(plan: Plan, stage: Stage, battery: Battery, steps: Mapping[str, pd.D
             inductance_per_leg_h=float(inductors[0].base.inductance),
             legs=inductors[0].slot.copies,
             greatest_discharge_w=max(0.0, *(float(f["power_w"].max()) for f in frames)),
+            link_fed_through_diodes=getattr(stage.topology, "feeds_link_through_diodes", True),
         )
     )

@@ -285,6 +285,31 @@ def test_ripple_of_others_on_the_port_counts_in_the_capacitors_current(tmp_path)
     assert not check.holds
 
 
+def test_the_caution_follows_the_topology(tmp_path):
+    rows = "time_s,power_w\n0,40000\n1,0\n"
+    link = {"voltage": "800 V", "capacitance": "1 mF"}
+    straight = ideal(tmp_path, rows, link=link)
+    turned = ideal(tmp_path, rows, link=link, stage={**IDEAL["stage"], "topology": "inverting"})
+    assert "through the upper diodes" in " ".join(straight.safety.sentences)
+    text = " ".join(turned.safety.sentences)
+    assert "upper diodes" not in text
+    assert "no diode of this topology feeds it" in text
+    assert turned.missions[0].energy.residual < 1e-12
+
+
+def test_a_flying_capacitor_stage_runs_with_its_own_capacitor(tmp_path):
+    parts = {
+        **IDEAL["stage"],
+        "topology": "flying-capacitor",
+        "flying_capacitor": {"capacitance": "20 uF", "rated_voltage": "450 V"},
+    }
+    outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,-40000\n2,0\n", stage=parts)
+    assert outcome.holds
+    assert outcome.steps["flying_capacitor.voltage_v"].tolist() == [400.0, 400.0]
+    assert outcome.steps["inductor.current_ripple_a"].tolist() == pytest.approx([0.0, 0.0], abs=1e-9)
+    assert outcome.steps["upper_switch.blocked_voltage_v"].max() == 400.0
+
+
 def test_a_saturation_current_is_held_against_the_peak(tmp_path):
     stage = {**IDEAL["stage"], "inductor": {"inductance": "500 uH", "saturation_current": "105 A"}}
     outcome = ideal(tmp_path, "time_s,power_w\n0,40000\n1,0\n", stage=stage)

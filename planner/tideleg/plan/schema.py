@@ -44,11 +44,20 @@ def _stage(
     keys: dict[str, Any] = {"topology": {"enum": [t.name for t in topologies]}}
     kinds: dict[str, PartKind] = {"busbar": "busbar", "control": "control"}
     for topology in topologies:
-        keys |= _properties(topology.settings)
+        for name, one in _properties(topology.settings).items():
+            keys[name] = _either(keys.get(name), one)
         kinds |= {slot.table: slot.kind for slot in _slots(topology)}
     for table, kind in sorted(kinds.items()):
         keys[table] = _part(kind, loss_models, cooling_models)
     return {"type": "object", "properties": keys, "required": ["topology"], "additionalProperties": False}
+
+
+def _either(known: Any, another: Any) -> Any:
+    """Return what satisfies one of two descriptions: topologies may read one key in different ranges."""
+    if known is None or known == another:
+        return another
+    choices = known["anyOf"] if set(known) == {"anyOf"} else [known]
+    return known if another in choices else {"anyOf": [*choices, another]}
 
 
 def _slots(topology: Topology) -> Sequence[Any]:
