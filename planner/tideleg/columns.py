@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from tideleg.battery import CAUSE_WORDS, Battery
-from tideleg.contract import CONDUCTION
+from tideleg.contract import CONDUCTION, Chooser
 from tideleg.march import Demand, Settled
 from tideleg.stage import Stage, StagePart
 
@@ -23,7 +23,7 @@ if TYPE_CHECKING:
 Columns = dict[str, "FloatArray"]
 
 PORT_CAPACITORS = ("battery_capacitor", "link_capacitor")
-"""Their voltage is that of the port, which has a column of its own."""
+"""Their voltage is that of the port, which has a column of its own, unless several stand in series across it."""
 
 DIRECTIONS = ("charge", "idle", "discharge")
 
@@ -55,7 +55,15 @@ def steps_frame(
     columns["curtailed_cause"] = _words(columns["curtailed_cause"], CAUSE_WORDS)
     columns["direction"] = _words(columns["direction"], DIRECTIONS)
     columns["conduction"] = _words(columns["conduction"], CONDUCTION)
+    if stage.choices:
+        columns[choice_name(stage)] = _words(columns.pop("choice"), stage.choices)
     return pd.DataFrame(columns, copy=False)
+
+
+def choice_name(stage: Stage) -> str:
+    """Return the name of the column that holds the topology's choice for each step."""
+    assert isinstance(stage.topology, Chooser)
+    return stage.topology.choice_name
 
 
 def _words(codes: FloatArray, words: tuple[str, ...]) -> pd.Categorical[str]:
@@ -90,6 +98,9 @@ def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
         "battery_heat_w": one((battery.source_voltage - battery.voltage) * battery.current),
         "switching_frequency_hz": one(operation.timing.frequency),
     }
+    if stage.choices:
+        columns["choice"] = one(block.point.choice)
+    columns |= {name: one(values) for name, values in operation.columns.items()}
     for part in stage.parts:
         if part.slot.kind in _READERS:
             columns |= _READERS[part.slot.kind](part, block, one)
@@ -130,7 +141,7 @@ def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]
     others = getattr(part.base, "external_ripple_current", None) or 0.0
     # Ripple of others on the port has no fixed phase to the stage's own: it adds in squares.
     columns = {f"{name}.current_rms_a": one(np.sqrt(exchange.current.ac_mean_square() + others * others))}
-    if name not in PORT_CAPACITORS:
+    if name not in PORT_CAPACITORS or part.slot.in_series > 1:
         columns[f"{name}.voltage_v"] = one(exchange.voltage)
     if part.base is not None and part.base.capacitance is not None:
         swing = exchange.current.charge_swing() / exchange.frequency
@@ -141,6 +152,7 @@ def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]
 _READERS: dict[str, Callable[[StagePart, Settled, Callable[[Any], FloatArray]], Columns]] = {
     "switch": _switch,
     "inductor": _inductor,
+    "transformer": _inductor,
     "capacitor": _capacitor,
 }
 

@@ -9,7 +9,8 @@ positive in discharge (battery to link, boost). SI units, temperatures in degC.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
+from types import MappingProxyType
 from typing import Any, Literal, NamedTuple, Protocol, TypeVar, runtime_checkable
 
 import numpy as np
@@ -26,7 +27,16 @@ PROJECT = "tideleg"
 hookspec = pluggy.HookspecMarker(PROJECT)
 hookimpl = pluggy.HookimplMarker(PROJECT)
 
-PartKind = Literal["switch", "inductor", "capacitor", "busbar", "control"]
+PartKind = Literal["switch", "inductor", "transformer", "capacitor", "busbar", "control"]
+
+READ_AS: Mapping[PartKind, PartKind] = {"transformer": "inductor"}
+"""A kind whose losses and cooling are those of another: a transformer's winding is read as an inductor's is."""
+
+
+def read_as(kind: PartKind) -> PartKind:
+    """Return the kind under which loss and cooling models know a part."""
+    return READ_AS.get(kind, kind)
+
 
 IDLE, CONTINUOUS, BOUNDARY, DISCONTINUOUS = 0, 1, 2, 3
 CONDUCTION = ("idle", "continuous", "boundary", "discontinuous")
@@ -42,6 +52,7 @@ class Point(NamedTuple):
     path_resistance : ohmic resistance in the way of one leg's current (windings and channels), from the last pass
         of the relaxation [Ω]; its drop shifts the duty ratio
     active : whether the stage switches in this step; False where it idles with its gates off
+    choice : code of the choice made for this step by a topology that makes choices (see `Chooser`), else 0
     """
 
     battery_voltage: FloatArray
@@ -49,6 +60,7 @@ class Point(NamedTuple):
     battery_current: FloatArray
     path_resistance: Values
     active: NDArray[np.bool_]
+    choice: NDArray[np.int64] | int = 0
 
 
 class Position(NamedTuple):
@@ -58,14 +70,14 @@ class Position(NamedTuple):
     blocks : voltage it commutates at turn-off and holds while off [V]
     turn_on_voltage : voltage across it just before its run begins [V]; differs from `blocks` where the node floats
     driven : 1 where its gate is switched in this step, 0 where it is not [-]
-    copies : how many such positions the stage has, all alike
+    copies : how many such positions work in this step, all alike; at most the copies of the slot
     """
 
     current: Waveform
     blocks: Values
     turn_on_voltage: Values
     driven: Values
-    copies: int = 1
+    copies: Values = 1
 
     def has_edges(self) -> NDArray[np.bool_]:
         """Return where the run has a beginning and an end: its width lies strictly between 0 and 1."""
@@ -86,12 +98,15 @@ class Winding(NamedTuple):
 
     current : [A]
     voltages : voltage across it during each segment of `current`, in the same order [V]; sets the flux
-    copies : how many such windings the stage has, all alike
+    copies : how many such windings work in this step, all alike; at most the copies of the slot
+    lone : whether the current follows from its own voltage and inductance alone; False where another winding shares
+        the flux (coupled inductors, a transformer)
     """
 
     current: Waveform
     voltages: tuple[Values, ...]
-    copies: int = 1
+    copies: Values = 1
+    lone: bool = True
 
 
 class Exchange(NamedTuple):
@@ -141,6 +156,8 @@ class Operation(NamedTuple):
     duty_ratio : of the position the topology names in its documentation [-]
     conduction : code IDLE, CONTINUOUS, BOUNDARY or DISCONTINUOUS
     reason : 0 where the stage can operate, else 1 + index into the topology's `reasons`
+    caution : 0, or 1 + index into the topology's `cautions` (see `Topology`) where it works near a border
+    columns : further numbers of each step that a reader of the topology wants, by column name with its unit
     """
 
     positions: Mapping[str, Position]
@@ -150,6 +167,8 @@ class Operation(NamedTuple):
     duty_ratio: FloatArray
     conduction: NDArray[np.int8]
     reason: NDArray[np.int8]
+    caution: NDArray[np.int8] | int = 0
+    columns: Mapping[str, Values] = MappingProxyType({})
 
 
 class Slot(NamedTuple):
@@ -159,12 +178,14 @@ class Slot(NamedTuple):
     kind : what sort of part fits
     table : name of the table under [stage] that holds its data; several slots may share one
     copies : how many equal parts the stage has there (before chips in parallel)
+    in_series : how many of them stand in series across their port
     """
 
     name: str
     kind: PartKind
     table: str
     copies: int = 1
+    in_series: int = 1
 
 
 @runtime_checkable
@@ -172,7 +193,9 @@ class Topology(Protocol):
     """A circuit: states the waveforms of a stage in both power directions.
 
     A topology whose diodes cannot carry battery current into the link while every gate is off says so with an
-    attribute `feeds_link_through_diodes = False`; without it the caution warns of that path.
+    attribute `feeds_link_through_diodes = False`; without it the caution warns of that path. One that can say where
+    it works near a border lists the words in an attribute `cautions` and sets `Operation.caution`. One that makes a
+    choice for each step (how many legs work, which mode) is a `Chooser` too.
     """
 
     @property
@@ -205,6 +228,60 @@ class Topology(Protocol):
         `inductance` gives each inductor slot's inductance [H]. Results must be finite everywhere, also where the
         stage cannot operate; such steps carry a reason.
         """
+        ...
+
+
+class Rest(NamedTuple):
+    """What is known of a block of steps before its relaxation: choices are made from it and then stay.
+
+    A choice that followed the losses could flip between passes, and the relaxation might have no fixed point.
+
+    duration : of each step (S,) [s]
+    battery_voltage : at rest, at the state of charge to which the request alone leads (C, S) [V]
+    link_voltage : (C, S) [V]
+    battery_current : what the request alone would draw, positive = discharge (C, S) [A]
+    active : whether the stage switches (C, S)
+    loss : gives the loss of the whole stage with one code at every step, at the first guess of temperature (C, S) [W]
+    """
+
+    duration: FloatArray
+    battery_voltage: FloatArray
+    link_voltage: FloatArray
+    battery_current: FloatArray
+    active: NDArray[np.bool_]
+    loss: Callable[[int], FloatArray]
+
+
+class Choice(NamedTuple):
+    """The choices of a block.
+
+    code : whole numbers from 0, index into the topology's `choices` (C, S)
+    carry : whatever the next block needs to go on, such as the last code and how long it has held
+    """
+
+    code: NDArray[np.int64]
+    carry: Any
+
+
+@runtime_checkable
+class Chooser(Protocol):
+    """A topology that makes a choice for each step, before anything is solved."""
+
+    @property
+    def choice_name(self) -> str:
+        """What is chosen, as the name of a column, such as "active_legs" or "mode"."""
+        ...
+
+    def choices(self, settings: Any) -> tuple[str, ...]:
+        """Return the words of the codes in order; empty where these settings leave nothing to choose."""
+        ...
+
+    def plain_choice(self, settings: Any) -> int | None:
+        """Return the code that a stage without choices would hold, to tell what choosing saves; None if none."""
+        ...
+
+    def choose(self, rest: Rest, settings: Any, before: Any) -> Choice:
+        """Return the choice for each step; `before` is the carry of the block before, None at the start."""
         ...
 
 

@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 
 from tideleg.battery import Battery
-from tideleg.contract import Point
+from tideleg.choices import chosen
+from tideleg.contract import Point, Rest
 from tideleg.errors import InputError
 from tideleg.march import Demand, Settled
 from tideleg.stage import Stage
@@ -24,7 +25,9 @@ def refuse_infeasible_rest(stage: Stage, battery: Battery, demand: Demand, missi
     voltage, _ = battery.source(soc, np.ones(shape, dtype=bool))
     zero = np.zeros(shape)
     link = np.broadcast_to(demand.link_voltage, shape)
-    point = Point(voltage, link, zero, zero, np.ones(shape, dtype=bool))
+    every = np.ones(shape, dtype=bool)
+    rest = Rest(demand.duration, voltage, link, zero, every, lambda _: zero)
+    point = Point(voltage, link, zero, zero, every, chosen(stage, rest, None).code)
     reason = np.broadcast_to(stage.operate(point).reason, shape)
     _refuse(stage, reason, point, demand, 0, mission)
 

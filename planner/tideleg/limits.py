@@ -90,6 +90,7 @@ def _temperature_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterat
     by_kind = {
         "switch": ("junction temperature", limits.junction_temperature),
         "inductor": ("inductor temperature", limits.inductor_temperature),
+        "transformer": ("inductor temperature", limits.inductor_temperature),
         "capacitor": ("capacitor temperature", limits.capacitor_temperature),
     }
     for part in stage.parts:
@@ -145,7 +146,8 @@ def _voltage_checks(limits: LimitsTable, stage: Stage, trip_voltage: float | Non
                 value, *when = _greatest(seen, f"{name}.voltage_ripple_v")
                 yield _upper(f"{port} voltage ripple", name, value, limit, "V", when)
             if rated is not None:
-                column = f"{port}_voltage_v" if port in ("battery", "link") else f"{name}.voltage_v"
+                at_port = port in ("battery", "link") and part.slot.in_series == 1
+                column = f"{port}_voltage_v" if at_port else f"{name}.voltage_v"
                 value, *when = _greatest(seen, column)
                 yield _upper("capacitor voltage", name, value, rated, "V", when)
 

@@ -12,7 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
-from typing import Literal, NamedTuple
+from typing import Any, Literal, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,7 +29,8 @@ from tideleg.battery import (
     resting_path,
     state_after,
 )
-from tideleg.contract import Point
+from tideleg.choices import NO_CHOICE, chosen, loss_with
+from tideleg.contract import Choice, Point, Rest
 from tideleg.errors import NoEquilibriumError
 from tideleg.heat import Propagator
 from tideleg.rootsearch import RootSearch
@@ -101,11 +102,13 @@ class Carry(NamedTuple):
     battery : the battery between two steps
     heat : modal thermal state
     temperature : (seated part, C, 1) last mean temperatures, the first guess of the next block [degC]
+    choice : what the topology's choices need to go on; None at the start
     """
 
     battery: BatteryState
     heat: FloatArray
     temperature: FloatArray
+    choice: Any = None
 
 
 class Settled(NamedTuple):
@@ -197,11 +200,11 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
     path = resting_path(carry.battery, shape[-1])
     path_resistance = np.zeros(shape)
     active = np.broadcast_to(~((demand.power == 0.0) & stage.idles_off), shape)
+    choice = _chosen(stage, battery, demand, carry, temperature, active)
     for passes in range(1, MOST_PASSES + 1):
         given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path)
-        point = Point(
-            given.voltage, np.broadcast_to(demand.link_voltage, shape), given.current, path_resistance, active
-        )
+        link = np.broadcast_to(demand.link_voltage, shape)
+        point = Point(given.voltage, link, given.current, path_resistance, active, choice.code)
         losses = stage.losses(point, _by_name(stage, temperature, demand, shape))
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
@@ -213,8 +216,32 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         _refuse_runaway(stage, temperature, losses, demand, elapsed)
         still = still and float(np.max(np.abs(moved), initial=0.0)) < TEMPERATURE_TOLERANCE
         if still and np.all(drift <= ENERGY_TOLERANCE * throughput + POWER_FLOOR * demand.duration.sum()):
-            return _finish(stage, battery, demand, carry, losses, temperature, response, path, active, passes)
+            carry = carry._replace(choice=choice.carry)
+            return _finish(stage, battery, demand, carry, losses, temperature, response, path, point, passes)
     raise _unsettled(stage, moved, losses, demand, elapsed)
+
+
+def _chosen(
+    stage: Stage,
+    battery: Battery,
+    demand: Demand,
+    carry: Carry,
+    temperature: FloatArray,
+    active: NDArray[np.bool_],
+) -> Choice:
+    """Return the topology's choice for each step, from the request alone and the battery at rest."""
+    shape = active.shape
+    path = resting_path(carry.battery, shape[-1])
+    if stage.choices:  # twice: the first answer finds the state of charge, the second the voltage there
+        request = _wanted(demand, np.zeros(shape))
+        path = path_of(answer(battery, request, demand.duration, carry.battery, path))
+        given = answer(battery, request, demand.duration, carry.battery, path)
+        link = np.broadcast_to(demand.link_voltage, shape)
+        point = Point(given.voltage, link, given.current, np.zeros(shape), active)
+        loss = loss_with(stage, point, _by_name(stage, temperature, demand, shape))
+        rest = Rest(demand.duration, given.source_voltage, link, given.current, active, loss)
+        return chosen(stage, rest, carry.choice)
+    return NO_CHOICE
 
 
 def _battery_still(before: BatteryPath, after: BatteryPath) -> bool:
@@ -264,14 +291,15 @@ def _finish(
     temperature: FloatArray,
     warmth: _Warmth,
     path: BatteryPath,
-    active: NDArray[np.bool_],
+    asked: Point,
     passes: int,
 ) -> Settled:
     """Solve the battery last, so that in - out - loss is an identity, and evaluate the losses once more as a check."""
     given = answer(battery, _wanted(demand, losses.total), demand.duration, carry.battery, path)
     shape = losses.total.shape
-    link_voltage = np.broadcast_to(demand.link_voltage, shape)
-    point = Point(given.voltage, link_voltage, given.current, losses.path_resistance, active)
+    point = asked._replace(
+        battery_voltage=given.voltage, battery_current=given.current, path_resistance=losses.path_resistance
+    )
     checked = stage.losses(point, _by_name(stage, warmth.mean, demand, shape))
     served = (given.cause == Cause.NONE) & (demand.allowed == demand.power)
     if demand.terminals == "link":
@@ -284,7 +312,7 @@ def _finish(
     gain = np.zeros_like(temperature)
     if stage.modes is not None:
         gain = np.einsum("pq...,q...->p...", stage.modes.resistance_matrix(), losses.slope)
-    after = Carry(state_after(given), warmth.state, warmth.mean[..., -1:])
+    after = Carry(state_after(given), warmth.state, warmth.mean[..., -1:], carry.choice)
     return Settled(
         power,
         curtailed,

@@ -210,7 +210,8 @@ def _safety(plan: Plan, stage: Stage, battery: Battery, steps: Mapping[str, pd.D
     link = max(float(f["link_voltage_v"].max()) for f in frames)
     link = link if plan.link.trip_voltage is None else max(link, plan.link.trip_voltage)
     inductors = [part for part in stage.parts if part.slot.kind == "inductor"]
-    own = [p.base.capacitance for p in stage.parts if p.slot.name == "link_capacitor" and p.base is not None]
+    at_link = [p for p in stage.parts if p.slot.name == "link_capacitor" and p.base is not None and p.base.capacitance]
+    own = [p.base.capacitance * p.slot.copies / p.slot.in_series**2 for p in at_link]
     return safety(
         SafetyFacts(
             highest_link_voltage_v=link,

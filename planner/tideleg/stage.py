@@ -9,10 +9,22 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from tideleg.contract import CooledPart, CoolingModel, Flow, LossModel, LossTerm, Operation, Point, Slot, Topology
+from tideleg.contract import (
+    Chooser,
+    CooledPart,
+    CoolingModel,
+    Flow,
+    LossModel,
+    LossTerm,
+    Operation,
+    Point,
+    Slot,
+    Topology,
+    read_as,
+)
 from tideleg.errors import InputError
 from tideleg.heat import Modes, modes
-from tideleg.plan import CapacitorBase, InductorBase, Plan, SwitchBase, read_table
+from tideleg.plan import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase, read_table
 from tideleg.registry import Registry, call_plugin, installed
 from tideleg.waveform import FloatArray, Values
 
@@ -22,6 +34,7 @@ WHOLE_STAGE = (Slot("busbar", "busbar", "busbar"), Slot("control", "control", "c
 _BASES: dict[str, dict[str, Any]] = {
     "switch": {"base": SwitchBase},
     "inductor": {"base": InductorBase},
+    "transformer": {"base": TransformerBase},
     "capacitor": {"base": CapacitorBase},
 }
 
@@ -97,6 +110,11 @@ class Stage:
         return () if self.modes is None else tuple(self.modes.parts)
 
     @property
+    def choices(self) -> tuple[str, ...]:
+        """Words of the choices that the topology makes for each step; empty where it makes none."""
+        return self.topology.choices(self.settings) if isinstance(self.topology, Chooser) else ()
+
+    @property
     def idles_off(self) -> bool:
         """Whether the gates are off while no power is asked."""
         return getattr(self.settings, "idle", "switching") == "off"
@@ -132,15 +150,19 @@ class Stage:
         for part in self.parts:
             name = part.slot.name
             reading = self._reading(part, operation, point)
+            # Parts of a slot that rest in this step (a shed leg) spend nothing; the heat of those that work is the
+            # slot's, evenly, since the ones that rest take turns.
+            working = getattr(reading, "copies", part.slot.copies)
+            share = working / part.slot.copies
             for model, term in ((bound.model, bound.term) for bound in part.terms):
                 ask = partial(term.at, reading, operation.timing, temperature[name])
                 line = call_plugin(self.registry, model, ask)
-                watts = line.watts * part.total
+                watts = line.watts * (working * part.in_parallel)
                 by_term[name, term.mechanism] = np.broadcast_to(watts, shape)
                 total += watts
                 if term.heats and name in index:
-                    heat[index[name]] += line.watts
-                    slope[index[name]] += line.watts_per_kelvin
+                    heat[index[name]] += line.watts * share
+                    slope[index[name]] += line.watts_per_kelvin * share
                 if term.ohmic:
                     ohmic += watts
         return Losses(operation, total, by_term, heat, slope, self._path_resistance(operation, ohmic))
@@ -153,7 +175,7 @@ class Stage:
             if np.all(np.asarray(part.in_parallel) == 1):
                 return position
             return position._replace(current=position.current.scaled(1.0 / part.in_parallel))
-        if kind == "inductor":
+        if read_as(kind) == "inductor":
             return operation.windings[name]
         if kind == "capacitor":
             return operation.exchanges[name]
@@ -193,7 +215,7 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
         in_parallel = getattr(base, "in_parallel", 1)
         parts.append(StagePart(slot, base, in_parallel, terms))
         missing += [(slot, name) for name in lacking]
-        if cooling is not None and slot.kind in cooling.part_settings:
+        if cooling is not None and read_as(slot.kind) in cooling.part_settings:
             cooled.append(CooledPart(slot.name, slot.kind, slot.copies * in_parallel, data[f"cooling {cooling.name}"]))
     thermal = _thermal(plan, registry, cooling, cooled)
     inductance = {p.slot.name: p.base.inductance for p in parts if p.slot.kind == "inductor"}
@@ -205,10 +227,10 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
 def _part_data(plan: Plan, registry: Registry, slot: Slot) -> dict[str, Any]:
     """Return the validated keys of one part's table: the core's own, each loss model's, each cooling model's."""
     wanted: dict[str, Any] = dict(_BASES.get(slot.kind, {}))
-    wanted |= {f"loss {m.name}": m.settings for m in registry.loss_models() if m.reads == slot.kind}
+    wanted |= {f"loss {m.name}": m.settings for m in registry.loss_models() if m.reads == read_as(slot.kind)}
     for model in registry.cooling_models():
-        if slot.kind in model.part_settings:
-            wanted[f"cooling {model.name}"] = model.part_settings[slot.kind]
+        if read_as(slot.kind) in model.part_settings:
+            wanted[f"cooling {model.name}"] = model.part_settings[read_as(slot.kind)]
     return read_table(plan, f"stage.{slot.table}", plan.stage.parts.get(slot.table, {}), wanted)
 
 
@@ -219,7 +241,7 @@ def _bound_terms(
     terms: list[BoundTerm] = []
     lacking: list[str] = []
     for model in registry.loss_models():
-        if model.reads != slot.kind:
+        if model.reads != read_as(slot.kind):
             continue
         offered: tuple[LossTerm[Any], ...] = ()
         if model.name not in plan.losses.leave_out:

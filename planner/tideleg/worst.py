@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from tideleg.contract import Operation
+from tideleg.contract import Operation, read_as
 from tideleg.limits import LimitCheck
 from tideleg.march import Settled
 from tideleg.outcome import Trace, WorstInstant
@@ -58,7 +58,7 @@ def _traces(stage: Stage, operation: Operation, row: int, shape: tuple[int, ...]
     for part in stage.parts:
         name, kind = part.slot.name, part.slot.kind
         label = name.replace("_", " ")
-        if kind == "inductor":
+        if read_as(kind) == "inductor":
             traces.append(_trace(f"{label} current", name, operation.windings[name].current, row, shape, frequency))
         elif kind == "switch":
             traces.append(_trace(f"{label} current", name, operation.positions[name].current, row, shape, frequency))

@@ -20,6 +20,7 @@ from tideleg.registry import Plugin, Registry
 TABLES: dict[PartKind, tuple[str, ...]] = {
     "switch": ("switch",),
     "inductor": ("inductor",),
+    "transformer": ("transformer",),
     "capacitor": ("link_capacitor", "battery_capacitor"),
     "busbar": ("busbar",),
     "control": ("control",),

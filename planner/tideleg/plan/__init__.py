@@ -16,6 +16,7 @@ from tideleg.plan.tables import (
     SizeTable,
     StageTable,
     SwitchBase,
+    TransformerBase,
     VehicleTable,
 )
 from tideleg.plan.writing import format_quantity, write_plan
@@ -34,6 +35,7 @@ __all__ = [
     "SizeTable",
     "StageTable",
     "SwitchBase",
+    "TransformerBase",
     "VehicleTable",
     "format_quantity",
     "load_plan",

@@ -7,12 +7,13 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
-from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase
+from tideleg.contract import CoolingModel, LossModel, PartKind, Topology, read_as
+from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
     "switch": [SwitchBase],
     "inductor": [InductorBase],
+    "transformer": [TransformerBase],
     "capacitor": [CapacitorBase],
     "busbar": [],
     "control": [],
@@ -68,8 +69,8 @@ def _slots(topology: Topology) -> Sequence[Any]:
 
 
 def _part(kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
-    models = [*_BASES[kind], *(m.settings for m in loss_models if m.reads == kind)]
-    models += [m.part_settings[kind] for m in cooling_models if kind in m.part_settings]
+    models = [*_BASES[kind], *(m.settings for m in loss_models if m.reads == read_as(kind))]
+    models += [m.part_settings[read_as(kind)] for m in cooling_models if read_as(kind) in m.part_settings]
     keys: dict[str, Any] = {"part": {"type": "string", "description": "file (TOML) whose keys are merged in"}}
     for model in models:
         keys |= _properties(model)

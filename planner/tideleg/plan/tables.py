@@ -188,6 +188,12 @@ class InductorBase(Table):
     saturation_current: Annotated[q.Current, Positive] | None = None
 
 
+class TransformerBase(Table):
+    """Core-known keys of a transformer; its data hold for both windings together, seen from the battery side."""
+
+    name: str | None = None
+
+
 class CapacitorBase(Table):
     """Core-known keys of a capacitor."""
 
