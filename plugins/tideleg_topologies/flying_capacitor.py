@@ -13,20 +13,19 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Literal
 
 import numpy as np
 from pydantic import Field
 
 from tideleg import CONTINUOUS, IDLE, Exchange, Operation, Point, Position, Slot, Timing, Values, Winding, hookimpl
 from tideleg_topologies import three_level
-from tideleg_topologies.leg import LegSettings
+from tideleg_topologies.gates import CAUTIONS
+from tideleg_topologies.leg import REASONS, SynchronousSettings
 
 
-class FlyingCapacitorSettings(LegSettings):
-    """Keys under [stage]: those of a two-level leg, without diode emulation, and the number of legs."""
+class FlyingCapacitorSettings(SynchronousSettings):
+    """Keys under [stage]: those of a two-level leg, and the number of legs."""
 
-    modulation: Literal["synchronous"] = "synchronous"
     legs: int = Field(default=1, ge=1, strict=True)
 
 
@@ -37,7 +36,8 @@ class FlyingCapacitor:
     name: str = "flying-capacitor"
     source: str = three_level.SOURCE
     settings: type[FlyingCapacitorSettings] = FlyingCapacitorSettings
-    reasons: tuple[str, ...] = three_level.REASONS
+    reasons: tuple[str, ...] = REASONS
+    cautions: tuple[str, ...] = CAUTIONS
 
     def slots(self, settings: FlyingCapacitorSettings) -> tuple[Slot, ...]:
         """Return the places for parts; two equal positions of each sort in a leg."""
@@ -57,6 +57,7 @@ class FlyingCapacitor:
         currents = three_level.ThreeLevelCurrents.at(
             point, point.battery_current / legs, frequency, inductance["inductor"]
         )
+        pulses = currents.gates(settings)
         inductor, into_link = currents.inductor(), currents.upper()
         driven = point.active.astype(np.float64)
         half = 0.5 * link
@@ -74,7 +75,9 @@ class FlyingCapacitor:
             timing=Timing(frequency, settings.dead_time),
             duty_ratio=currents.duty * driven,
             conduction=np.where(point.active, np.int8(CONTINUOUS), np.int8(IDLE)),
-            reason=currents.reason,
+            reason=pulses.reason(currents.reason, three_level.SHORT),
+            caution=pulses.caution,
+            columns=pulses.columns(),
         )
 
 

@@ -7,10 +7,10 @@ from dataclasses import dataclass
 from typing import Literal
 
 from tideleg import Operation, Point, Slot, Topology, Values, hookimpl
-from tideleg_topologies import leg
+from tideleg_topologies import gates, leg, legs
 
 
-class HalfBridgeSettings(leg.LegSettings):
+class HalfBridgeSettings(leg.TwoLevelSettings):
     """Keys under [stage] of a single leg; `legs` may be written out, and is 1."""
 
     legs: Literal[1] = 1
@@ -20,33 +20,20 @@ class HalfBridgeSettings(leg.LegSettings):
 class HalfBridge:
     """A single leg. The reported duty ratio is that of the upper position."""
 
-    @property
-    def name(self) -> str:
-        """Name that a plan gives in `stage.topology`."""
-        return "half-bridge"
-
-    @property
-    def source(self) -> str:
-        """Where its equations come from."""
-        return leg.SOURCE
-
-    @property
-    def settings(self) -> type[HalfBridgeSettings]:
-        """Model of the keys it reads under [stage]."""
-        return HalfBridgeSettings
-
-    @property
-    def reasons(self) -> tuple[str, ...]:
-        """Why it cannot operate at a point."""
-        return leg.REASONS
+    name: str = "half-bridge"
+    source: str = leg.SOURCE
+    settings: type[HalfBridgeSettings] = HalfBridgeSettings
+    reasons: tuple[str, ...] = leg.REASONS
+    cautions: tuple[str, ...] = gates.CAUTIONS
+    assumptions: tuple[str, ...] = leg.ASSUMPTIONS
 
     def slots(self, settings: HalfBridgeSettings) -> tuple[Slot, ...]:
         """Return the places for parts."""
-        return leg.slots(settings.legs)
+        return legs.slots(settings.legs)
 
     def operate(self, point: Point, settings: HalfBridgeSettings, inductance: Mapping[str, Values]) -> Operation:
         """Return the steady state at each step."""
-        return leg.operate(point, settings, inductance)
+        return legs.operate(point, settings, inductance, legs.Sharing(1, 1))
 
 
 @hookimpl

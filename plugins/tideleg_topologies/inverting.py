@@ -28,16 +28,16 @@ from tideleg import (
     Winding,
     hookimpl,
 )
-from tideleg_topologies.leg import NO_DUTY_RATIO, LegSettings
+from tideleg_topologies.gates import CAUTIONS, SHORT_PULSE, Pulses, gates
+from tideleg_topologies.leg import NO_DUTY_RATIO, SynchronousSettings
 
 LEAST_DUTY = 1e-6
 """Keeps the inductor current finite where no duty ratio exists; such steps carry a reason [-]."""
 
 
-class InvertingSettings(LegSettings):
-    """Keys under [stage]: those of a two-level leg, without diode emulation."""
+class InvertingSettings(SynchronousSettings):
+    """Keys under [stage]: those of a two-level leg."""
 
-    modulation: Literal["synchronous"] = "synchronous"
     legs: Literal[1] = 1
 
 
@@ -51,7 +51,8 @@ class Inverting:
         " M = D/(1 - D), inductor current I_out/(1 - D) (chapter from memory)"
     )
     settings: type[InvertingSettings] = InvertingSettings
-    reasons: tuple[str, ...] = (NO_DUTY_RATIO,)
+    reasons: tuple[str, ...] = (NO_DUTY_RATIO, SHORT_PULSE)
+    cautions: tuple[str, ...] = CAUTIONS
     feeds_link_through_diodes: bool = False
 
     def slots(self, settings: InvertingSettings) -> tuple[Slot, ...]:
@@ -83,6 +84,9 @@ class Inverting:
         discharge = Segment(duty * on, (1.0 - duty) * on, peak, valley)
         from_battery, into_link = Waveform((charge,)), Waveform((discharge,))
         lost = (root < 0.0) | (wanted <= LEAST_DUTY) | (wanted >= 1.0 - LEAST_DUTY)
+        pulses = gates(
+            Pulses((1.0 - duty) * on, duty * on, valley, peak), frequency, settings.dead_time, settings.minimum_pulse
+        )
         return Operation(
             positions={
                 "battery_switch": Position(from_battery, both, both, on),
@@ -96,7 +100,9 @@ class Inverting:
             timing=Timing(frequency, settings.dead_time),
             duty_ratio=duty * on,
             conduction=np.where(point.active, np.int8(CONTINUOUS), np.int8(IDLE)),
-            reason=np.where(lost, np.int8(1), np.int8(0)),
+            reason=pulses.reason(np.where(lost, np.int8(1), np.int8(0)), 2),
+            caution=pulses.caution,
+            columns=pulses.columns(),
         )
 
 

@@ -1,42 +1,33 @@
-"""The two-level leg: its keys, its currents in every mode, and the stage of equal legs that share the work.
+"""The two-level leg: its keys, and its currents in every mode.
 
 The inductor joins the battery port to the switch node; the upper position joins the node to the link, the lower one
 joins it to the return. All modes share one layout. The lower run begins at place 0. The upper run follows it, except
 where a charging current is discontinuous: there it ends where the next lower run begins. The idle part of a
 discontinuous period lies wherever neither runs.
 
-Modelling choices: switches and rectifiers are ideal; ohmic drops enter through their mean over the conducting part of
-the period; capacitor voltages are constant within it; both port capacitors take the whole ac part of what the stage
-exchanges; legs are alike and evenly shifted; the node rests at the battery voltage while no switch conducts, without
-ringing.
+With synchronous switching the current may reverse and is never discontinuous; with diode emulation it does not
+reverse; with boundary modulation the frequency follows the current, so that the valley just reverses.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from typing import Any, Literal, NamedTuple
+from typing import Any, Literal, NamedTuple, Self
 
 import numpy as np
-from pydantic import BaseModel, ConfigDict, Field, ValidationInfo, field_validator
+from pydantic import BaseModel, ConfigDict, Field, ValidationInfo, field_validator, model_validator
 
 from tideleg import (
     BOUNDARY,
     CONTINUOUS,
     DISCONTINUOUS,
     IDLE,
-    Exchange,
     FloatArray,
-    Operation,
     Point,
-    Position,
     Segment,
-    Slot,
-    Timing,
     Values,
-    Waveform,
-    Winding,
     quantity,
 )
+from tideleg_topologies.gates import SHORT_PULSE
 
 SOURCE = (
     "R. W. Erickson and D. Maksimović, Fundamentals of Power Electronics, 2nd ed., Kluwer, 2001: volt-second and"
@@ -45,7 +36,17 @@ SOURCE = (
 
 NOT_BELOW_LINK = "the battery voltage is not below the link voltage"
 NO_DUTY_RATIO = "no duty ratio between 0 and 1 carries this current (resistive drop too large)"
-REASONS = (NOT_BELOW_LINK, NO_DUTY_RATIO)
+REASONS = (NOT_BELOW_LINK, NO_DUTY_RATIO, SHORT_PULSE)
+
+ASSUMPTIONS = (
+    "switches and rectifiers are ideal in the waveforms; ohmic drops enter through their mean over the conducting part"
+    " of the period, and capacitor voltages are constant within it",
+    "each port capacitor takes the whole ac part of what the stage exchanges with that port",
+    "while no switch of a leg conducts (discontinuous current) its node rests at the battery voltage, without ringing:"
+    " the lower position turns on from the battery voltage in discharge, the upper one from link less battery voltage"
+    " in charge",
+)
+"""Modelling choices that a reader of the report must know."""
 
 BOUNDARY_TOLERANCE = 1e-9
 """A current this close to half its ripple, relative to it, is said to be at the boundary [-]."""
@@ -62,13 +63,13 @@ _LEAST = 1e-100
 
 
 class LegSettings(BaseModel):
-    """Keys under [stage] that every stage of two-level legs reads."""
+    """Keys under [stage] that every stage of switched legs reads."""
 
     model_config = ConfigDict(extra="forbid")
 
     switching_frequency: quantity.Frequency = Field(gt=0.0)
-    modulation: Literal["synchronous", "diode"] = "synchronous"
     dead_time: quantity.Time = Field(default=0.0, ge=0.0)
+    minimum_pulse: quantity.Time = Field(default=0.0, ge=0.0)
     idle: Literal["switching", "off"] = "switching"
 
     @field_validator("dead_time")
@@ -83,6 +84,45 @@ class LegSettings(BaseModel):
         return dead_time
 
 
+class SynchronousSettings(LegSettings):
+    """Keys under [stage] of legs that only switch synchronously; the key may be written out."""
+
+    modulation: Literal["synchronous"] = "synchronous"
+
+
+class TwoLevelSettings(LegSettings):
+    """Keys under [stage] of two-level legs: three ways to switch.
+
+    lowest_frequency : with boundary modulation, the lower end of its window; switching_frequency is the upper one
+    reversal_current : by how much the valley then passes zero, so that the node swings softly
+    """
+
+    modulation: Literal["synchronous", "diode", "boundary"] = "synchronous"
+    lowest_frequency: quantity.Frequency | None = Field(default=None, gt=0.0)
+    reversal_current: quantity.Current | None = Field(default=None, ge=0.0)
+
+    @model_validator(mode="after")
+    def _boundary_has_a_window(self) -> Self:
+        lowest = self.lowest_frequency
+        if self.modulation != "boundary":
+            if lowest is not None or self.reversal_current is not None:
+                raise ValueError(
+                    "lowest_frequency and reversal_current belong to modulation = 'boundary'; found modulation ="
+                    f" {self.modulation!r}"
+                )
+        elif lowest is None:
+            raise ValueError(
+                "lowest_frequency is missing: with modulation = 'boundary' the frequency moves between it and"
+                " switching_frequency, the highest"
+            )
+        elif lowest > self.switching_frequency:
+            raise ValueError(
+                f"lowest_frequency: found {lowest:g} Hz, above switching_frequency {self.switching_frequency:g} Hz,"
+                " which is the highest"
+            )
+        return self
+
+
 class LegState(NamedTuple):
     """Steady state of one leg at each step, arrays (..., S).
 
@@ -90,7 +130,7 @@ class LegState(NamedTuple):
     node_mean : what the inductor sees as battery voltage, drops taken off [V]
     conducting : share of the period in which current flows: 1 where continuous, 0 where idle [-]
     conduction : code
-    reason : code
+    reason : 0, or 1 + index into (NOT_BELOW_LINK, NO_DUTY_RATIO)
     """
 
     lower: Segment
@@ -101,42 +141,27 @@ class LegState(NamedTuple):
     reason: Any
 
 
-def slots(legs: int) -> tuple[Slot, ...]:
-    """Return the places for parts in a stage of so many legs."""
-    return (
-        Slot("upper_switch", "switch", "switch", legs),
-        Slot("lower_switch", "switch", "switch", legs),
-        Slot("inductor", "inductor", "inductor", legs),
-        Slot("battery_capacitor", "capacitor", "battery_capacitor"),
-        Slot("link_capacitor", "capacitor", "link_capacitor"),
-    )
+def frequency_of(point: Point, current: FloatArray, settings: TwoLevelSettings, inductance: Values) -> Values:
+    """Return the switching frequency at each step [Hz].
 
-
-def operate(point: Point, settings: Any, inductance: Mapping[str, Values]) -> Operation:
-    """Return the steady state of `settings.legs` equal, evenly shifted legs; see `Topology.operate`.
-
-    `Operation.duty_ratio` is the share of the period in which the UPPER position conducts.
+    Notes
+    -----
+    Boundary modulation: half the ripple, V_link D (1 - D)/(2 L f), is to equal |I| + I_reversal, so that the valley
+    just passes zero by I_reversal and both edges are soft; hence f = V_link D (1 - D)/(2 L (|I| + I_reversal)). Outside
+    its window the frequency stays at the window's edge: above it the valley reverses further, below it not at all.
     """
-    legs: int = settings.legs
-    frequency: Values = settings.switching_frequency
-    state = leg_state(point, point.battery_current / legs, frequency, inductance["inductor"], settings.modulation)
-    inductor = Waveform((state.lower, state.upper))
-    into_link = Waveform((state.upper,))
-    return Operation(
-        positions=_positions(point, state, legs),
-        windings={"inductor": Winding(inductor, (state.node_mean, state.node_mean - point.link_voltage), legs)},
-        exchanges={
-            "battery_capacitor": Exchange(_folded(inductor, legs), legs * frequency, point.battery_voltage),
-            "link_capacitor": Exchange(_folded(into_link, legs), legs * frequency, point.link_voltage),
-        },
-        timing=Timing(frequency, settings.dead_time),
-        duty_ratio=np.asarray(state.upper.width),
-        conduction=state.conduction,
-        reason=state.reason,
-    )
+    if settings.lowest_frequency is None:
+        return settings.switching_frequency
+    link = np.maximum(point.link_voltage, _LEAST)
+    duty = np.clip((point.battery_voltage - current * point.path_resistance) / link, 0.0, 1.0)
+    half_ripple = np.abs(current) + (settings.reversal_current or 0.0)
+    wanted = point.link_voltage * duty * (1.0 - duty) / (2.0 * inductance * np.maximum(half_ripple, _LEAST))
+    return np.clip(wanted, settings.lowest_frequency, settings.switching_frequency)
 
 
-def leg_state(point: Point, current: FloatArray, frequency: Values, inductance: Values, modulation: str) -> LegState:
+def leg_state(
+    point: Point, current: FloatArray, frequency: Values, inductance: Values, settings: TwoLevelSettings
+) -> LegState:
     """Return the steady state of one leg.
 
     Parameters
@@ -147,8 +172,8 @@ def leg_state(point: Point, current: FloatArray, frequency: Values, inductance: 
         Mean inductor current of this leg, positive = discharge [A].
     frequency, inductance : float or ndarray, broadcastable to (..., S)
         [Hz], [H]
-    modulation : str
-        "synchronous" or "diode".
+    settings : TwoLevelSettings
+        Its modulation, and the window of frequency of boundary modulation.
 
     Notes
     -----
@@ -162,19 +187,20 @@ def leg_state(point: Point, current: FloatArray, frequency: Values, inductance: 
     wanted = (point.battery_voltage - drop) / np.maximum(point.link_voltage, _LEAST)
     size = np.abs(current)
     share: Values = 1.0
-    if modulation == "diode":
+    diode = settings.modulation == "diode"
+    if diode:
         wanted, share = _discontinuous(point, wanted, drop, size, step_of_current)
     duty = np.clip(wanted, 0.0, 1.0)
     off_duty = 1.0 - duty
     half_ripple = 0.5 * step_of_current * duty * off_duty
     on: Values = 1.0 if np.all(point.active) else point.active.astype(np.float64)
-    conduction = _conduction(modulation, size, half_ripple, on)
+    conduction = _conduction(settings, size, half_ripple, frequency, on)
     share = share * on
     half = share * half_ripple
     middle = on * current
     upper_place = lower_width = share * off_duty
     upper_width = share * duty
-    if modulation == "diode":
+    if diode:
         middle = np.copysign(np.maximum(np.abs(middle), half), current)  # where discontinuous, the least size is zero
         upper_place = np.where(current < 0.0, 1.0 - upper_width, lower_width)
     valley, peak = middle - half, middle + half
@@ -213,39 +239,31 @@ def _discontinuous(
     return squeezed, conducting(squeezed)
 
 
-def _conduction(modulation: str, size: FloatArray, half_ripple: FloatArray, on: Values) -> Any:
+def _conduction(
+    settings: TwoLevelSettings, size: FloatArray, half_ripple: FloatArray, frequency: Values, on: Values
+) -> Any:
     """Return the conduction code of each step."""
     gap = size - half_ripple
     tolerance = BOUNDARY_TOLERANCE * half_ripple
     code = np.where(np.abs(gap) <= tolerance, np.int8(BOUNDARY), np.int8(CONTINUOUS))
     flows: Any = np.asarray(on) > 0.0
-    if modulation == "diode":
+    if settings.modulation == "diode":
         code = np.where(gap < -tolerance, np.int8(DISCONTINUOUS), code)
         flows = flows & (size > 0.0)
+    if settings.lowest_frequency is not None:
+        inside = (frequency > settings.lowest_frequency) & (frequency < settings.switching_frequency)
+        code = np.where(inside, np.int8(BOUNDARY), code)
     return np.where(flows, code, np.int8(IDLE))
 
 
 def _reason(point: Point, wanted: FloatArray) -> Any:
     """Return the reason code of each step; a stage at rest needs no duty ratio, yet its upper diode still conducts."""
     lost = (wanted <= 0.0) | (wanted >= 1.0)
-    code = np.where(lost & point.active, np.int8(1 + REASONS.index(NO_DUTY_RATIO)), np.int8(0))
-    not_below = point.battery_voltage >= point.link_voltage
-    return np.where(not_below, np.int8(1 + REASONS.index(NOT_BELOW_LINK)), code)
+    code = np.where(lost & point.active, np.int8(2), np.int8(0))
+    return np.where(point.battery_voltage >= point.link_voltage, np.int8(1), code)
 
 
-def _positions(point: Point, state: LegState, legs: int) -> dict[str, Position]:
-    """Return both switch positions of one leg."""
-    place, width, start, end = state.upper
-    link = point.link_voltage
-    lower_rises, upper_rises = _turn_on_voltages(point, state)
-    driven = (np.asarray(state.conducting) > 0.0).astype(np.float64)
-    return {
-        "upper_switch": Position(Waveform((Segment(place, width, -start, -end),)), link, upper_rises, driven, legs),
-        "lower_switch": Position(Waveform((state.lower,)), link, lower_rises, driven, legs),
-    }
-
-
-def _turn_on_voltages(point: Point, state: LegState) -> tuple[Values, Values]:
+def turn_on_voltages(point: Point, state: LegState) -> tuple[Values, Values]:
     """Return the voltage that the lower and the upper position turn on from.
 
     After an idle part of the period the node rests at the battery voltage: the lower position turns on from that in
@@ -258,7 +276,3 @@ def _turn_on_voltages(point: Point, state: LegState) -> tuple[Values, Values]:
     charges = point.battery_current < 0.0
     lower = link - np.where(charges, 0.0, (link - battery) * settled)
     return lower, link - np.where(charges, battery * settled, 0.0)
-
-
-def _folded(current: Waveform, legs: int) -> Waveform:
-    return current if legs == 1 else current.fold(legs)

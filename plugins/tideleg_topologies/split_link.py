@@ -28,13 +28,13 @@ import numpy as np
 
 from tideleg import CONTINUOUS, IDLE, Exchange, Operation, Point, Position, Slot, Timing, Values, Winding, hookimpl
 from tideleg_topologies import three_level
-from tideleg_topologies.leg import LegSettings
+from tideleg_topologies.gates import CAUTIONS
+from tideleg_topologies.leg import REASONS, SynchronousSettings
 
 
-class SplitLinkSettings(LegSettings):
-    """Keys under [stage]: those of a two-level leg, without diode emulation. One leg: a midpoint serves one."""
+class SplitLinkSettings(SynchronousSettings):
+    """Keys under [stage]: those of a two-level leg. One leg: a midpoint serves one."""
 
-    modulation: Literal["synchronous"] = "synchronous"
     legs: Literal[1] = 1
 
 
@@ -48,7 +48,8 @@ class SplitLink:
     name: str = "split-link"
     source: str = three_level.SOURCE + "; each half of a split link: dV = I_out D_boost/(f C), charge balance"
     settings: type[SplitLinkSettings] = SplitLinkSettings
-    reasons: tuple[str, ...] = three_level.REASONS
+    reasons: tuple[str, ...] = REASONS
+    cautions: tuple[str, ...] = CAUTIONS
 
     def slots(self, settings: SplitLinkSettings) -> tuple[Slot, ...]:
         """Return the places for parts; two outer and two inner positions, two halves of the link capacitor."""
@@ -68,6 +69,7 @@ class SplitLink:
         """
         frequency, link = settings.switching_frequency, point.link_voltage
         currents = three_level.ThreeLevelCurrents.at(point, point.battery_current, frequency, inductance["inductor"])
+        pulses = currents.gates(settings)
         inductor, into_link, midpoint = currents.inductor(), currents.upper(), currents.middle()
         driven = point.active.astype(np.float64)
         half = 0.5 * link
@@ -84,8 +86,10 @@ class SplitLink:
             timing=Timing(frequency, settings.dead_time),
             duty_ratio=currents.duty * driven,
             conduction=np.where(point.active, np.int8(CONTINUOUS), np.int8(IDLE)),
-            reason=currents.reason,
+            reason=pulses.reason(currents.reason, three_level.SHORT),
+            caution=pulses.caution,
             columns={
+                **pulses.columns(),
                 "midpoint.current_rms_a": midpoint.rms(),
                 "midpoint.current_mean_a": midpoint.mean(),
                 "midpoint.charge_swing_c": midpoint.charge_swing() / frequency,

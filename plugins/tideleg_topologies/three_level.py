@@ -17,13 +17,15 @@ from typing import Any
 import numpy as np
 
 from tideleg import FloatArray, Point, Segment, Values, Waveform
-from tideleg_topologies.leg import NO_DUTY_RATIO, NOT_BELOW_LINK
+from tideleg_topologies.gates import SHORT_PULSE, Gates, Pulses, gates
+from tideleg_topologies.leg import NO_DUTY_RATIO, NOT_BELOW_LINK, REASONS, LegSettings
 
 SOURCE = (
     "T. Meynard and H. Foch, Multi-level conversion, IEEE PESC 1992 (from memory): ripple V D (1/2 - D)/(L f) below"
     " half duty, V (D - 1/2)(1 - D)/(L f) above"
 )
-REASONS = (NOT_BELOW_LINK, NO_DUTY_RATIO)
+SHORT = 1 + REASONS.index(SHORT_PULSE)
+"""Reason code of a pulse that is too short."""
 
 
 @dataclass(frozen=True)
@@ -60,6 +62,12 @@ class ThreeLevelCurrents:
         lost = np.where((wanted <= 0.0) | (wanted >= 1.0), np.int8(1 + REASONS.index(NO_DUTY_RATIO)), np.int8(0))
         reason = np.where(point.battery_voltage >= link, np.int8(1 + REASONS.index(NOT_BELOW_LINK)), lost)
         return cls(duty, falls, rises, on * current + 0.5 * ripple, on * current - 0.5 * ripple, below, reason)
+
+    def gates(self, settings: LegSettings) -> Gates:
+        """Return the gate pulses: each pair of complementary positions switches as a two-level leg does."""
+        on = 2.0 * (self.falls + self.rises)
+        pulses = Pulses(self.duty * on, (1.0 - self.duty) * on, self.valley, self.peak)
+        return gates(pulses, settings.switching_frequency, settings.dead_time, settings.minimum_pulse)
 
     def voltages(self, link: FloatArray) -> tuple[FloatArray, ...]:
         """Return the inductor voltage in each piece, positive = rising current [V]."""

@@ -410,7 +410,12 @@ def test_slots_and_operation_name_the_same_parts(topology: Topology, legs: int) 
         (half_bridge(), {"switching_frequency": "20 kHz", "legs": 2}, "legs", "should be 1"),
         (half_bridge(), {"switching_frequency": "20 kHz", "dead_time": "-1 ns"}, "dead_time", "greater than or equal"),
         (half_bridge(), {"switching_frequency": "20 kHz", "dead_time": "25 us"}, "dead_time", "less than 2.5e-05 s"),
-        (half_bridge(), {"switching_frequency": "20 kHz", "modulation": "pwm"}, "modulation", "'synchronous' or"),
+        (
+            half_bridge(),
+            {"switching_frequency": "20 kHz", "modulation": "pwm"},
+            "modulation",
+            "'synchronous', 'diode' or",
+        ),
         (half_bridge(), {"switching_frequency": "20 kHz", "idle": "sleep"}, "idle", "'switching' or 'off'"),
         (half_bridge(), {"switching_frequency": "20 uH"}, "switching_frequency", "unit of inductance"),
         (half_bridge(), {"switching_frequency": "20 kHz", "phases": 2}, "phases", "not permitted"),
