@@ -7,8 +7,10 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from tideleg.battery import Battery
-from tideleg.march import Demand, Settled
-from tideleg.outcome import BatteryEntry, EnergyAccount, LossEntry, ThermalEntry
+from tideleg.choices import loss_with, plain_choice
+from tideleg.columns import choice_name
+from tideleg.march import Demand, Settled, temperatures_by_name
+from tideleg.outcome import BatteryEntry, ChoiceAccount, EnergyAccount, LossEntry, ThermalEntry
 from tideleg.stage import Stage
 
 if TYPE_CHECKING:
@@ -61,6 +63,32 @@ def loss_entries(stage: Stage, demand: Demand, blocks: list[Settled]) -> tuple[L
             by_direction = [float(joules[direction == sign].sum()) for sign in (1.0, -1.0, 0.0)]
             entries.append(LossEntry(*key, *by_direction))
     return tuple(sorted(entries, key=lambda entry: -entry.total_j))
+
+
+def choice_account(stage: Stage, demand: Demand, blocks: list[Settled]) -> ChoiceAccount | None:
+    """Return what the topology chose along one pass and what that saved; None where it leaves nothing to choose."""
+    if not stage.choices:
+        return None
+    codes = np.concatenate([np.broadcast_to(block.point.choice, block.losses.total.shape)[0] for block in blocks])
+    hours = float(demand.duration.sum()) / 3600.0
+    shares = {
+        word: float(demand.duration[codes == code].sum()) / (3600.0 * hours) for code, word in enumerate(stage.choices)
+    }
+    plain, saved = plain_choice(stage), None
+    if plain is not None:
+        begin, saved = 0, 0.0
+        for block in blocks:
+            part = demand.block(begin)
+            loss = loss_with(stage, block.point, temperatures_by_name(stage, block.mean, part))
+            saved += float(np.sum((loss(plain) - block.losses.total)[0] * part.duration))
+            begin += len(part.power)
+    return ChoiceAccount(
+        name=choice_name(stage),
+        share_of_time=shares,
+        changes_per_hour=float(np.count_nonzero(np.diff(codes))) / hours,
+        plain=None if plain is None else stage.choices[plain],
+        saved_j=saved,
+    )
 
 
 def battery_entry(battery: Battery, demand: Demand, steps: pd.DataFrame) -> BatteryEntry:

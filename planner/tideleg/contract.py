@@ -194,8 +194,10 @@ class Topology(Protocol):
 
     A topology whose diodes cannot carry battery current into the link while every gate is off says so with an
     attribute `feeds_link_through_diodes = False`; without it the caution warns of that path. One that can say where
-    it works near a border lists the words in an attribute `cautions` and sets `Operation.caution`. One that makes a
-    choice for each step (how many legs work, which mode) is a `Chooser` too.
+    it works near a border lists the words in an attribute `cautions` and sets `Operation.caution`. Modelling choices
+    that a reader of the report must know stand in an attribute `assumptions`. A topology that reads keys for which
+    another topology's plan has no value is a `Starter` too; one that makes a choice for each step (how many legs work,
+    which mode) is a `Chooser` too.
     """
 
     @property
@@ -228,6 +230,30 @@ class Topology(Protocol):
         `inductance` gives each inductor slot's inductance [H]. Results must be finite everywhere, also where the
         stage cannot operate; such steps carry a reason.
         """
+        ...
+
+
+class Need(NamedTuple):
+    """What a stage must do, in four numbers: enough for a topology to propose values of its own.
+
+    battery_voltage : lowest at rest [V]
+    link_voltage : [V]
+    power : greatest, either way [W]
+    switching_frequency : [Hz]
+    """
+
+    battery_voltage: float
+    link_voltage: float
+    power: float
+    switching_frequency: float
+
+
+@runtime_checkable
+class Starter(Protocol):
+    """A topology that proposes values for keys that a plan made for another topology does not have."""
+
+    def starting_values(self, need: Need) -> Mapping[str, float | str]:
+        """Return values by dotted key under [stage], such as "turns_ratio" or "inductor.inductance", SI units."""
         ...
 
 

@@ -205,7 +205,7 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, path_resistance, active, choice.code)
-        losses = stage.losses(point, _by_name(stage, temperature, demand, shape))
+        losses = stage.losses(point, temperatures_by_name(stage, temperature, demand))
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
@@ -238,7 +238,7 @@ def _chosen(
         given = answer(battery, request, demand.duration, carry.battery, path)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, np.zeros(shape), active)
-        loss = loss_with(stage, point, _by_name(stage, temperature, demand, shape))
+        loss = loss_with(stage, point, temperatures_by_name(stage, temperature, demand))
         rest = Rest(demand.duration, given.source_voltage, link, given.current, active, loss)
         return chosen(stage, rest, carry.choice)
     return NO_CHOICE
@@ -256,9 +256,9 @@ def _wanted(demand: Demand, loss: FloatArray) -> FloatArray:
     return demand.allowed + loss if demand.terminals == "link" else demand.allowed + np.zeros_like(loss)
 
 
-def _by_name(stage: Stage, temperature: FloatArray, demand: Demand, shape: tuple[int, int]) -> dict[str, FloatArray]:
-    """Return the mean temperature of every part; one without a thermal path is held at the coolant."""
-    held = np.broadcast_to(demand.held, shape)
+def temperatures_by_name(stage: Stage, temperature: FloatArray, demand: Demand) -> dict[str, FloatArray]:
+    """Return the mean temperature (C, S) of every part; one without a thermal path is held at the coolant."""
+    held = np.broadcast_to(demand.held, (temperature.shape[1], len(demand.power)))
     seated = {name: temperature[i] for i, name in enumerate(stage.seated)}
     return {part.slot.name: seated.get(part.slot.name, held) for part in stage.parts}
 
@@ -300,7 +300,7 @@ def _finish(
     point = asked._replace(
         battery_voltage=given.voltage, battery_current=given.current, path_resistance=losses.path_resistance
     )
-    checked = stage.losses(point, _by_name(stage, warmth.mean, demand, shape))
+    checked = stage.losses(point, temperatures_by_name(stage, warmth.mean, demand))
     served = (given.cause == Cause.NONE) & (demand.allowed == demand.power)
     if demand.terminals == "link":
         power = np.where(served, demand.power, given.power - losses.total)

@@ -106,13 +106,31 @@ class BatteryEntry:
 
 
 @dataclass(frozen=True)
+class ChoiceAccount:
+    """What a topology chose along one pass, and what choosing was worth.
+
+    name : what is chosen, such as "active_legs"
+    share_of_time : by word [-]
+    changes_per_hour : how often the choice changed
+    plain : the word that a stage without choices would hold; None where that means nothing
+    saved_j : loss with `plain` at every step less the loss as chosen, at the same temperatures [J]; None without it
+    """
+
+    name: str
+    share_of_time: Mapping[str, float]
+    changes_per_hour: float
+    plain: str | None
+    saved_j: float | None
+
+
+@dataclass(frozen=True)
 class MissionResult:
     """One mission, run once.
 
     name, passes_per_year : of the mission
     rules : sentences that say how the profile was read
     steps : one row a step, columns with units in their names
-    energy, losses, battery : accounts of one pass
+    energy, losses, battery, choice : accounts of one pass
     passes : passes that the relaxation took in its hardest block
     """
 
@@ -124,6 +142,7 @@ class MissionResult:
     losses: tuple[LossEntry, ...]
     battery: BatteryEntry
     passes: int
+    choice: ChoiceAccount | None = None
 
 
 @dataclass(frozen=True)
@@ -298,6 +317,7 @@ class Outcome:
                     "passes_per_year": m.passes_per_year,
                     "steps": len(m.steps),
                     "relaxation_passes": m.passes,
+                    "choice": _plain(m.choice),
                 }
                 for m in self.missions
             ],

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from tideleg.accounts import battery_entry, energy_account, loss_entries, thermal_entries
+from tideleg.accounts import battery_entry, choice_account, energy_account, loss_entries, thermal_entries
 from tideleg.battery import Battery
 from tideleg.caution import Safety, SafetyFacts, safety
 from tideleg.columns import steps_frame
@@ -129,6 +129,7 @@ def _run_mission(
         losses=loss_entries(stage, demand, blocks),
         battery=battery_entry(battery, demand, steps),
         passes=max(block.passes for block in blocks),
+        choice=choice_account(stage, demand, blocks),
     )
     return MissionRun(profile, demand, blocks, steps, result)
 
@@ -182,7 +183,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         safety=_safety(plan, stage, battery, steps),
         not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
         warnings=warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal),
-        rules=RULES,
+        rules=(*RULES, *getattr(stage.topology, "assumptions", ())),
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),
         plan_file=plan.file,
     )

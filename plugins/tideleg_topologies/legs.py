@@ -96,12 +96,13 @@ def operate(point: Point, settings: TwoLevelSettings, inductance: Mapping[str, V
     frequency = frequency_of(point, even_share, settings, others)
     sorts = []
     if sharing.lead:
-        # With one leg at work the lead leg carries the whole, and the others' share below multiplies no leg.
         several = np.maximum(sharing.working - 1, 1)
         lead_share = np.where(sharing.working > 1, sharing.lead_current, 1.0)
         henry = inductance["lead_inductor"] * sharing.lead_inductance
         sorts.append(_leg("lead_", point, even_share * lead_share, frequency, henry, settings, 1))
-        even_share = even_share * np.where(sharing.working > 1, (sharing.working - lead_share) / several, 1.0)
+        # With one leg at work it is the lead leg: it carries the whole, and the others rest.
+        even_share = even_share * np.where(sharing.working > 1, (sharing.working - lead_share) / several, 0.0)
+        point = point._replace(active=point.active & (sharing.working > 1))
     rest = sharing.working - len(sorts)
     sorts.append(_leg("", point, even_share, frequency, others, settings, rest))
     first = sorts[0].state

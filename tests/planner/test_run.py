@@ -341,3 +341,40 @@ def test_kerbside_is_what_its_plan_says():
     outcome = load_plan(SCENARIOS / "kerbside" / "plan.toml")
     assert (outcome.battery.open_circuit_voltage.value[0], outcome.battery.open_circuit_voltage.value[-1]) == (324, 453)
     assert outcome.stage.settings["legs"] == 4
+
+
+SHED = {
+    **IDEAL["stage"],
+    "topology": "interleaved",
+    "legs": 3,
+    "shedding": "threshold",
+    "shedding_current": "60 A",
+    "shedding_dwell": "2 s",
+    "switch": {"on_resistance": "10 mohm"},
+}
+
+
+def test_shedding_reports_its_changes_and_what_it_saves(tmp_path):
+    rows = "time_s,power_w\n0,8000\n10,60000\n20,8000\n40,0\n"
+    outcome = ideal(tmp_path, rows, stage=SHED)
+    # 400 V: 20 A needs one leg of 60 A, 150 A needs three; the third block falls at once: 10 s have passed.
+    assert outcome.steps["active_legs"].tolist() == ["1", "3", "1"]
+    choice = outcome.missions[0].choice
+    assert choice.name == "active_legs"
+    assert dict(choice.share_of_time) == pytest.approx({"1": 0.75, "2": 0.0, "3": 0.25})
+    assert choice.changes_per_hour == pytest.approx(2 / (40 / 3600))
+    always = ideal(tmp_path, rows, stage={k: v for k, v in SHED.items() if not k.startswith("shedding")})
+    # No temperature is modelled, so what choosing saves is the difference of two runs.
+    difference = always.missions[0].energy.loss_j - outcome.missions[0].energy.loss_j
+    assert choice.saved_j == pytest.approx(difference, rel=1e-3)
+    assert difference < 0.0  # with ohmic loss alone, shedding costs
+    assert outcome.summary()["missions"][0]["choice"]["plain"] == "3"
+
+
+def test_a_leg_that_rests_costs_nothing(tmp_path):
+    one = ideal(tmp_path, "time_s,power_w\n0,8000\n10,0\n", stage=SHED)
+    single = {k: v for k, v in SHED.items() if not k.startswith("shedding")} | {"legs": 1}
+    alone = ideal(tmp_path, "time_s,power_w\n0,8000\n10,0\n", stage=single)
+    assert one.missions[0].energy.loss_j == pytest.approx(alone.missions[0].energy.loss_j, rel=1e-9)
+    assert one.steps["upper_switch.loss_w"].tolist() == [0.0]
+    assert one.steps["lead_upper_switch.loss_w"].tolist() == pytest.approx(alone.steps["upper_switch.loss_w"].tolist())

@@ -11,11 +11,14 @@ from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
 from tideleg.conformance.losses import loss_checks
 from tideleg.conformance.topologies import topology_checks
-from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
 from tideleg.errors import InputError
 from tideleg.plan import Plan
 from tideleg.quantity import parse
 from tideleg.registry import Plugin, Registry
+
+GREATEST_CURRENT = 300.0
+"""Battery current either way up to which a topology is asked [A]."""
 
 TABLES: dict[PartKind, tuple[str, ...]] = {
     "switch": ("switch",),
@@ -54,29 +57,39 @@ def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
 
 
 def _topology(topology: Topology, plan: Plan) -> Iterator[Check]:
-    settings = _own(plan.stage.settings, topology.settings)
-    if "legs" in topology.settings.model_fields:
-        settings["legs"] = _legs(topology, settings)
     voltages = plan.battery.open_circuit_voltage.value
     link = plan.link.voltage
-    inductance = plan.stage.parts.get("inductor", {}).get("inductance", 150e-6)
+    frequency = parse(plan.stage.settings.get("switching_frequency", 40e3), "frequency")
+    start = _starting_values(topology, Need(min(voltages), link, GREATEST_CURRENT * max(voltages), frequency))
+    settings: dict[str, Any] = {key: value for key, value in start.items() if key in topology.settings.model_fields}
+    settings |= _own(plan.stage.settings, topology.settings)
+    if "legs" in topology.settings.model_fields:
+        settings["legs"] = _legs(topology, settings)
+    inductance = start.get("inductor.inductance", plan.stage.parts.get("inductor", {}).get("inductance", 150e-6))
     yield from topology_checks(
         topology,
         settings,
         inductance=parse(inductance, "inductance"),
         battery=(min(voltages), max(voltages)),
         link=(0.9 * link, 1.1 * link),
+        current=GREATEST_CURRENT,
     )
 
 
+def _starting_values(topology: Topology, need: Need) -> Mapping[str, float | str]:
+    return topology.starting_values(need) if isinstance(topology, Starter) else {}
+
+
 def _legs(topology: Topology, settings: Mapping[str, object]) -> int:
-    """Return as many legs as the plan has, or one where the topology has no more."""
-    wanted = settings.get("legs", 2)
-    try:
-        topology.settings.model_validate({**settings, "legs": wanted})
-    except ValidationError:
-        return 1
-    return int(str(wanted))
+    """Return as many legs as the plan has, or those that the topology has by default, or one."""
+    default = topology.settings.model_fields["legs"].default
+    for wanted in (settings.get("legs", 2), default):
+        try:
+            topology.settings.model_validate({**settings, "legs": wanted})
+        except ValidationError:
+            continue
+        return int(str(wanted))
+    return 1
 
 
 def _loss(model: LossModel, plan: Plan) -> Iterator[Check]:

@@ -95,9 +95,11 @@ def _adapted(plan: Plan, topology: str, registry: Registry) -> tuple[Plan, tuple
     except InputError:
         if kept.get("legs") is None:
             raise
-        other = with_stage(other, legs=1)
+        default = fields["legs"].default
+        legs = default if isinstance(default, int) else 1
+        other = with_stage(other, legs=legs)
         build_stage(other, registry)
-        notes.append(f"legs = 1 instead of {kept['legs']}: {topology} has no more")
+        notes.append(f"legs = {legs} instead of {kept['legs']}: {topology} has no other number")
     return other, tuple(notes)
 
 

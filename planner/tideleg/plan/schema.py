@@ -7,7 +7,7 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from tideleg.contract import CoolingModel, LossModel, PartKind, Topology, read_as
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
 from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
@@ -64,7 +64,10 @@ def _either(known: Any, another: Any) -> Any:
 def _slots(topology: Topology) -> Sequence[Any]:
     """Return a topology's slots for settings built from its defaults; names of tables do not depend on numbers."""
     fields = topology.settings.model_fields
-    given = {name: 1 for name, field in fields.items() if field.is_required()}
+    given: dict[str, Any] = {name: 1 for name, field in fields.items() if field.is_required()}
+    if isinstance(topology, Starter):
+        own = topology.starting_values(Need(300.0, 800.0, 50e3, 40e3))  # any stage serves: names of tables are wanted
+        given |= {key: value for key, value in own.items() if key in fields}
     return topology.slots(topology.settings.model_validate(given))
 
 

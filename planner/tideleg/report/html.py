@@ -82,6 +82,7 @@ def _stage(outcome: Outcome) -> dict[str, Any]:
     return {
         "facts": list(outcome.stage_facts.items()),
         "parts": _parts(outcome.parts),
+        "choices": words.choice_rows(outcome),
         "worst_text": _worst(outcome),
         "worst_values": [(words.plain(name), f"{value:.6g}") for name, value in outcome.worst.values.items()],
         "thermal": [_thermal(entry) for entry in outcome.thermal],

@@ -179,6 +179,29 @@ def all_rules(outcome: Outcome) -> list[str]:
     return [*outcome.rules, *(f"{m.name}: {rule}" for m in outcome.missions for rule in m.rules)]
 
 
+def choice_rows(outcome: Outcome) -> list[tuple[str, str]]:
+    """Return what the topology chose in each mission, and what that was worth."""
+    rows = []
+    for mission in outcome.missions:
+        choice = mission.choice
+        if choice is None:
+            continue
+        shares = ", ".join(f"{word}: {100.0 * share:.1f} %" for word, share in choice.share_of_time.items())
+        rows.append((f"{plain(choice.name)}, share of time, {mission.name}", shares))
+        rows.append((f"changes an hour, {mission.name}", f"{choice.changes_per_hour:.4g}"))
+        if choice.saved_j is not None:
+            size, unit = energy_scale(abs(choice.saved_j))
+            loss = mission.energy.loss_j
+            share = f" ({100.0 * choice.saved_j / (loss + choice.saved_j):.2f} % of that loss)" if loss > 0.0 else ""
+            rows.append(
+                (
+                    f"saved against {plain(choice.name)} {choice.plain} always, {mission.name}",
+                    f"{choice.saved_j / size:.4g} {unit} a pass{share}, at the same temperatures",
+                )
+            )
+    return rows
+
+
 def energy_scale(greatest_j: float) -> tuple[float, str]:
     """Return the unit of energy that suits the greatest of a table, as (size [J], symbol)."""
     if greatest_j >= 3.6e6:
