@@ -49,6 +49,7 @@ if TYPE_CHECKING:
     from tideleg.mission import passport, read_profile
     from tideleg.outcome import Outcome
     from tideleg.plan import Plan, load_plan, plan_from_mapping
+    from tideleg.reaching import reach
     from tideleg.report import write_results
     from tideleg.running import run
 
@@ -59,6 +60,7 @@ _ON_DEMAND = {
     "load_plan": "tideleg.plan",
     "passport": "tideleg.mission",
     "plan_from_mapping": "tideleg.plan",
+    "reach": "tideleg.reaching",
     "read_profile": "tideleg.mission",
     "run": "tideleg.running",
     "size": "tideleg.decide.size",
@@ -122,6 +124,7 @@ __all__ = [
     "passport",
     "plan_from_mapping",
     "quantity",
+    "reach",
     "read_profile",
     "run",
     "size",

@@ -76,5 +76,6 @@ def _refuse(stage: Stage, reason: object, point: Point, demand: Demand, begin: i
     raise InputError(
         f"mission {mission!r}, {time:g} s: topology {stage.topology.name!r} cannot operate:"
         f" {stage.topology.reasons[int(codes[row, step]) - 1]} (battery {battery:.4g} V, link {link:.4g} V)."
-        " Change the link or battery voltage, or choose a topology for this range"
+        " Change the link or battery voltage, or choose a topology for this range; `tideleg reach PLAN` draws where it"
+        " can operate"
     )

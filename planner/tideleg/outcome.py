@@ -14,6 +14,7 @@ from tideleg.limits import LimitCheck
 if TYPE_CHECKING:
     import pandas as pd
 
+    from tideleg.reaching import Reach
     from tideleg.waveform import FloatArray
 
 SCHEMA_VERSION = 1
@@ -132,6 +133,7 @@ class MissionResult:
     steps : one row a step, columns with units in their names
     energy, losses, battery, choice : accounts of one pass
     passes : passes that the relaxation took in its hardest block
+    reach : where it asks the topology to operate
     """
 
     name: str
@@ -143,6 +145,7 @@ class MissionResult:
     battery: BatteryEntry
     passes: int
     choice: ChoiceAccount | None = None
+    reach: Reach | None = field(default=None, repr=False)
 
 
 @dataclass(frozen=True)

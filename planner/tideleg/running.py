@@ -21,6 +21,7 @@ from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
 from tideleg.outcome import MissionResult, Outcome
 from tideleg.plan import Plan, load_plan
+from tideleg.reaching import reach_of
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
 from tideleg.verdict import verdict_sentence, warnings_of
@@ -130,6 +131,7 @@ def _run_mission(
         battery=battery_entry(battery, demand, steps),
         passes=max(block.passes for block in blocks),
         choice=choice_account(stage, demand, blocks),
+        reach=reach_of(stage, battery, demand, profile.name),
     )
     return MissionRun(profile, demand, blocks, steps, result)
 

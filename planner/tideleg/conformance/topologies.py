@@ -62,16 +62,13 @@ class Bench:
         return self.topology.operate(point, self.settings, self.inductance)
 
     def _chosen(self, point: Point) -> Any:
-        """Return the choice of every step as if it stood alone: neighbours of a cloud have no order in time."""
+        """Return the choice of every step as if it stood alone: each is a candidate of one step."""
         assert isinstance(self.topology, Chooser)
-        columns = []
-        for k in range(point.battery_current.shape[-1]):
-            cut = slice(k, k + 1)
-            battery, link, current = (np.asarray(v)[:, cut] for v in point[:3])
-            none = np.zeros(battery.shape)
-            rest = Rest(np.ones(1), battery, link, current, np.asarray(point.active)[:, cut], partial(_nothing, none))
-            columns.append(self.topology.choose(rest, self.settings, None).code)
-        return np.concatenate(columns, axis=-1)
+        shape = point.battery_current.shape
+        battery, link, current = (np.reshape(np.broadcast_to(v, shape), (-1, 1)) for v in point[:3])
+        active = np.reshape(np.broadcast_to(point.active, shape), (-1, 1))
+        rest = Rest(np.ones(1), battery, link, current, active, partial(_nothing, np.zeros(battery.shape)))
+        return np.reshape(self.topology.choose(rest, self.settings, None).code, shape)
 
 
 def topology_checks(

@@ -7,14 +7,17 @@ import re
 from tideleg.outcome import Outcome
 from tideleg.report.bars import draw_losses, draw_margins
 from tideleg.report.drawing import Picture
+from tideleg.report.reach_map import draw_reach
 from tideleg.report.traces import draw_power, draw_temperatures, draw_waveforms, has_waveforms
 
 
 def draw_all(outcome: Outcome) -> dict[str, Picture]:
     """Return every picture that the outcome has data for; with several missions those over time once for each."""
     drawn: dict[str, Picture] = {}
-    for mission, end in zip(outcome.missions, _endings([m.name for m in outcome.missions]), strict=True):
+    for mission, end in zip(outcome.missions, endings([m.name for m in outcome.missions]), strict=True):
         drawn[f"power{end}"] = draw_power(mission)
+        if mission.reach is not None:
+            drawn[f"reach{end}"] = draw_reach(mission.reach)
         if outcome.thermal:
             drawn[f"temperatures{end}"] = draw_temperatures(outcome, mission)
     if any(entry.total_j > 0.0 for mission in outcome.missions for entry in mission.losses):
@@ -26,7 +29,7 @@ def draw_all(outcome: Outcome) -> dict[str, Picture]:
     return drawn
 
 
-def _endings(names: list[str]) -> list[str]:
+def endings(names: list[str]) -> list[str]:
     """Return what tells the missions apart in file names: safe on every system, and numbered so that none collide."""
     if len(names) == 1:
         return [""]

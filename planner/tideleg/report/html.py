@@ -27,7 +27,7 @@ def render_html(outcome: Outcome, pictures: Mapping[str, tuple[bytes, Picture]])
         name: {"png": base64.b64encode(png).decode("ascii"), "caption": picture.caption, "alt": picture.alt}
         for name, (png, picture) in pictures.items()
     }
-    over_time = [name for name in shown if name.startswith(("power", "temperatures"))]
+    over_time = [name for name in shown if name.startswith(("power", "reach", "temperatures"))]
     content = _page_one(outcome) | _stage(outcome) | _books(outcome)
     return environment.get_template("page.html.jinja").render(
         outcome=outcome, pictures=shown, over_time=over_time, broken=words.BROKEN, **content
