@@ -24,7 +24,7 @@ from tideleg.plan import Plan, load_plan
 from tideleg.reaching import reach_of
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
-from tideleg.verdict import verdict_sentence, warnings_of
+from tideleg.verdict import cautions_of, verdict_sentence, warnings_of
 from tideleg.worst import worst_instant
 
 if TYPE_CHECKING:
@@ -170,6 +170,8 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
     gains = {name: np.max([b.gain[:, 0].max(axis=-1) for b in r.blocks], axis=0) for name, r in runs.items()}
     thermal = thermal_entries(stage, {name: r.demand for name, r in runs.items()}, gains, steps)
     holds = all(check.holds for check in checks) and not unchecked
+    warnings = warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal)
+    cautions = cautions_of(stage, [(name, r.demand, r.blocks) for name, r in runs.items()])
     return Outcome(
         title=plan.title,
         holds=holds,
@@ -184,7 +186,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         changes=(),
         safety=_safety(plan, stage, battery, steps),
         not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
-        warnings=warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal),
+        warnings=warnings + cautions,
         rules=(*RULES, *getattr(stage.topology, "assumptions", ())),
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),
         plan_file=plan.file,

@@ -184,9 +184,13 @@ class Stage:
         return Flow(point.battery_voltage, point.link_voltage, point.battery_current, link_current, active)
 
     def _path_resistance(self, operation: Operation, ohmic: FloatArray) -> FloatArray:
-        """Return all ohmic loss over the squared leg current, per leg [Ω]: what one leg's current must overcome."""
+        """Return all ohmic loss over the squared leg current, per leg [Ω]: what one leg's current must overcome.
+
+        The leg current is that of the inductors. A transformer's winding lies in series with one and carries the same
+        current once more: counted again, it would make the resistance too small.
+        """
         square = np.zeros_like(ohmic)
-        for winding in operation.windings.values():
+        for winding in (operation.windings[part.slot.name] for part in self.parts if part.slot.kind == "inductor"):
             square = square + winding.copies * winding.current.mean_square()
         return np.where(square > 0.0, ohmic / np.where(square > 0.0, square, 1.0), 0.0)
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from tideleg.battery import Battery
 from tideleg.limits import LimitCheck
-from tideleg.march import Demand
+from tideleg.march import Demand, Settled
 from tideleg.outcome import ThermalEntry
 from tideleg.stage import Stage
 
@@ -60,4 +60,20 @@ def warnings_of(
                     f"{name}: steps of up to {longest:g} s are longer than the shortest thermal time constant"
                     f" ({shortest:.2g} s); temperature peaks inside a step are not seen"
                 )
+    return tuple(found)
+
+
+def cautions_of(stage: Stage, missions: Iterable[tuple[str, Demand, list[Settled]]]) -> tuple[str, ...]:
+    """Return one sentence for each caution that the topology states in a mission: how long it holds, and since when."""
+    words: tuple[str, ...] = getattr(stage.topology, "cautions", ())
+    found = []
+    for name, demand, blocks in missions if words else ():
+        codes = [np.broadcast_to(b.checked.operation.caution, b.losses.total.shape)[0] for b in blocks]
+        code = np.concatenate(codes)
+        for index, word in enumerate(words):
+            held = code == index + 1
+            if np.any(held):
+                share = float(demand.duration[held].sum() / demand.duration.sum())
+                first = float(demand.duration[: int(np.argmax(held))].sum())
+                found.append(f"{name}: {word} ({quantity_text(share, 'share')} of the time, first at {first:g} s)")
     return tuple(found)
