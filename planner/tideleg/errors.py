@@ -4,6 +4,7 @@ TidelegError
 ├── InputError            the person's input: exit status 2, one message, no traceback
 │   ├── PlanError         a plan or parts file: file, line, key, what was found, what is allowed
 │   ├── ProfileError      a profile file: file, line, column
+│   ├── InfeasibleError   the topology cannot do what a mission asks at some step
 │   └── PluginError       a plugin that is needed is missing, broken or raised
 └── NoEquilibriumError    the losses outrun the cooling: no steady temperature exists for a part at an instant
 """
@@ -51,6 +52,10 @@ class ProfileError(InputError):
         if column:
             where.append(column)
         super().__init__(f"{', '.join(where)}: {fault}")
+
+
+class InfeasibleError(InputError):
+    """A stage cannot operate at some step of a mission; the message gives the instant, the voltages and the reason."""
 
 
 class PluginError(InputError):

@@ -7,7 +7,7 @@ import numpy as np
 from tideleg.battery import Battery
 from tideleg.choices import chosen
 from tideleg.contract import Point, Rest
-from tideleg.errors import InputError
+from tideleg.errors import InfeasibleError, InputError
 from tideleg.march import Demand, Settled
 from tideleg.stage import Stage
 
@@ -17,7 +17,7 @@ def refuse_infeasible_rest(stage: Stage, battery: Battery, demand: Demand, missi
 
     Raises
     ------
-    InputError
+    InfeasibleError
         With the first instant, both voltages and the topology's reason.
     """
     shape = (1, len(demand.power))
@@ -73,7 +73,7 @@ def _refuse(stage: Stage, reason: object, point: Point, demand: Demand, begin: i
     battery = float(point.battery_voltage[row, step])
     link = float(point.link_voltage[row, step])
     time = float(demand.duration[: begin + step].sum())
-    raise InputError(
+    raise InfeasibleError(
         f"mission {mission!r}, {time:g} s: topology {stage.topology.name!r} cannot operate:"
         f" {stage.topology.reasons[int(codes[row, step]) - 1]} (battery {battery:.4g} V, link {link:.4g} V)."
         " Change the link or battery voltage, or choose a topology for this range; `tideleg reach PLAN` draws where it"

@@ -38,6 +38,7 @@ class FlyingCapacitor:
     settings: type[FlyingCapacitorSettings] = FlyingCapacitorSettings
     reasons: tuple[str, ...] = REASONS
     cautions: tuple[str, ...] = CAUTIONS
+    assumptions: tuple[str, ...] = three_level.ASSUMPTIONS
 
     def slots(self, settings: FlyingCapacitorSettings) -> tuple[Slot, ...]:
         """Return the places for parts; two equal positions of each sort in a leg."""

@@ -29,7 +29,7 @@ from tideleg import (
     hookimpl,
 )
 from tideleg_topologies.gates import CAUTIONS, SHORT_PULSE, Pulses, gates
-from tideleg_topologies.leg import NO_DUTY_RATIO, SynchronousSettings
+from tideleg_topologies.leg import ASSUMPTIONS, NO_DUTY_RATIO, SynchronousSettings
 
 LEAST_DUTY = 1e-6
 """Keeps the inductor current finite where no duty ratio exists; such steps carry a reason [-]."""
@@ -53,6 +53,7 @@ class Inverting:
     settings: type[InvertingSettings] = InvertingSettings
     reasons: tuple[str, ...] = (NO_DUTY_RATIO, SHORT_PULSE)
     cautions: tuple[str, ...] = CAUTIONS
+    assumptions: tuple[str, ...] = ASSUMPTIONS[:2]
     feeds_link_through_diodes: bool = False
 
     def slots(self, settings: InvertingSettings) -> tuple[Slot, ...]:

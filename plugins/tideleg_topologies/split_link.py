@@ -50,6 +50,11 @@ class SplitLink:
     settings: type[SplitLinkSettings] = SplitLinkSettings
     reasons: tuple[str, ...] = REASONS
     cautions: tuple[str, ...] = CAUTIONS
+    assumptions: tuple[str, ...] = (
+        *three_level.ASSUMPTIONS,
+        "the battery floats against the rails of the link; the current of that common mode is not modelled",
+        "a limit of the link voltage ripple is held against each half of the split link",
+    )
 
     def slots(self, settings: SplitLinkSettings) -> tuple[Slot, ...]:
         """Return the places for parts; two outer and two inner positions, two halves of the link capacitor."""

@@ -18,11 +18,17 @@ import numpy as np
 
 from tideleg import FloatArray, Point, Segment, Values, Waveform
 from tideleg_topologies.gates import SHORT_PULSE, Gates, Pulses, gates
+from tideleg_topologies.leg import ASSUMPTIONS as LEG_ASSUMPTIONS
 from tideleg_topologies.leg import NO_DUTY_RATIO, NOT_BELOW_LINK, REASONS, LegSettings
 
 SOURCE = (
     "T. Meynard and H. Foch, Multi-level conversion, IEEE PESC 1992 (from memory): ripple V D (1/2 - D)/(L f) below"
     " half duty, V (D - 1/2)(1 - D)/(L f) above"
+)
+ASSUMPTIONS = (
+    *LEG_ASSUMPTIONS[:2],
+    "the middle level of a three-level leg is balanced at half the link voltage and both of its pulse trains are alike;"
+    " a spread between them would leave ripple at the device frequency itself",
 )
 SHORT = 1 + REASONS.index(SHORT_PULSE)
 """Reason code of a pulse that is too short."""

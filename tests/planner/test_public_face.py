@@ -7,6 +7,7 @@ import pytest
 import tideleg
 from tideleg.contract import Hooks
 
+STARTER = Path(__file__).parents[2] / "planner" / "tideleg" / "starter"
 DEVELOPERS = Path(__file__).parents[2] / "DEVELOPERS.md"
 
 
@@ -45,3 +46,10 @@ def test_main_jobs_are_callable_with_docstrings():
 @pytest.mark.parametrize("hook", [name for name in vars(Hooks) if not name.startswith("_")])
 def test_every_hook_is_documented(hook):
     assert f"`{hook}`" in DEVELOPERS.read_text(encoding="utf-8")
+
+
+def test_the_worked_topology_is_the_one_that_a_new_project_gets():
+    # That project's own test puts it through the contract; see tests/planner/conformance.
+    text = (STARTER / "topology.py.txt").read_text(encoding="utf-8").replace("PLUGIN_NAME", "my-leg")
+    assert text.rstrip() in DEVELOPERS.read_text(encoding="utf-8")
+    assert len(text.splitlines()) < 150

@@ -4,16 +4,17 @@ from __future__ import annotations
 
 import dataclasses
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 
-from tideleg.decide.changes import part_number, with_stage, with_topology
-from tideleg.errors import InputError, NoEquilibriumError
+from tideleg.decide.adapt import adapted
+from tideleg.decide.changes import part_number
+from tideleg.errors import InfeasibleError, InputError, NoEquilibriumError
 from tideleg.outcome import Outcome
 from tideleg.plan import Plan, load_plan
 from tideleg.registry import Registry, installed
 from tideleg.running import Progress, run
-from tideleg.stage import build_stage
+from tideleg.stage import Stage, StagePart, build_stage
 
 
 @dataclasses.dataclass(frozen=True)
@@ -21,7 +22,7 @@ class Contender:
     """One stage of a comparison.
 
     label : plan title or topology
-    outcome : None where it found no thermal equilibrium; `fault` then says so
+    outcome : None where it cannot operate or found no thermal equilibrium; `fault` then says so
     fairness : what it was given to spend: label -> value; equal rows make the comparison fair
     adaptations : what had to change in the plan so that this topology could use it
     """
@@ -69,7 +70,7 @@ def compare(
     if topologies:
         if len(loaded) != 1 or len(topologies) < 2:
             raise InputError("with topologies to compare, give one plan and at least two topologies")
-        entries = [(name, *_adapted(loaded[0], name, known)) for name in topologies]
+        entries = [(name, *adapted(loaded[0], name, known)) for name in topologies]
     else:
         if len(loaded) < 2:
             raise InputError("give at least two plans to compare, or one plan and at least two topologies")
@@ -79,28 +80,6 @@ def compare(
     rows = contenders[0].fairness
     unequal = tuple(row for row in rows if len({c.fairness.get(row) for c in contenders}) > 1)
     return Comparison(contenders, unequal)
-
-
-def _adapted(plan: Plan, topology: str, registry: Registry) -> tuple[Plan, tuple[str, ...]]:
-    """Return the plan with another topology; keys that it does not take are changed, and said."""
-    registry.topology(topology)
-    other = with_topology(plan, topology)
-    fields = registry.topology(topology).settings.model_fields
-    dropped = [key for key in other.stage.settings if key not in fields]
-    kept = {key: value for key, value in other.stage.settings.items() if key in fields}
-    other = other.model_copy(update={"stage": other.stage.model_copy(update={"settings": kept})})
-    notes = [f"{key} = {plan.stage.settings[key]} left out: {topology} does not take it" for key in dropped]
-    try:
-        build_stage(other, registry)
-    except InputError:
-        if kept.get("legs") is None:
-            raise
-        default = fields["legs"].default
-        legs = default if isinstance(default, int) else 1
-        other = with_stage(other, legs=legs)
-        build_stage(other, registry)
-        notes.append(f"legs = {legs} instead of {kept['legs']}: {topology} has no other number")
-    return other, tuple(notes)
 
 
 def _refuse_other_missions(plans: Sequence[Plan]) -> None:
@@ -129,7 +108,7 @@ def _contender(
 ) -> Contender:
     try:
         outcome = run(plan, registry=registry, progress=progress)
-    except NoEquilibriumError as error:
+    except (NoEquilibriumError, InfeasibleError) as error:
         return Contender(label, None, str(error), _fairness(plan, registry, None), notes)
     return Contender(label, outcome, "", _fairness(plan, registry, outcome), notes)
 
@@ -137,46 +116,59 @@ def _contender(
 def _fairness(plan: Plan, registry: Registry, outcome: Outcome | None) -> dict[str, str]:
     """Return what a stage may spend: chips, on-resistance budget, magnetic and capacitive energy, ripple, limits."""
     stage = build_stage(plan, registry)
-    chips = sum(int(p.total) for p in stage.parts if p.slot.kind == "switch")
-    ohms = part_number(plan, "switch", "on_resistance", "resistance")
-    peak = _greatest_peak(outcome)
-    windings = [(p.base.inductance, p.slot.copies) for p in stage.parts if p.slot.kind == "inductor"]
-    magnetic = sum(0.5 * henry * peak * peak * copies for henry, copies in windings) if peak is not None else None
+    chips = [p for p in stage.parts if p.slot.kind == "switch"]
+    siemens = [_conductance(plan, part) for part in chips]
+    given = [value for value in siemens if value is not None]
+    ratings = sorted({p.base.rated_voltage for p in chips if p.base is not None and p.base.rated_voltage is not None})
     ripple = None if outcome is None else _greatest_ripple(outcome)
     junction = plan.limits.junction_temperature
     return {
-        "chips": f"{chips}",
-        "chip conductance budget": "not given" if ohms is None else f"{chips / ohms:.4g} S",
-        "inductor energy at peak": "unknown" if magnetic is None else f"{magnetic:.3g} J",
-        "capacitor energy": f"{_capacitor_energy(plan, stage_voltages(plan)):.3g} J",
+        "chips": f"{sum(int(p.total) for p in chips)}",
+        "chip conductance budget": "not given" if len(given) < len(siemens) else f"{sum(given):.4g} S",
+        "chip voltage rating": ", ".join(f"{v:g} V" for v in ratings) or "not given",
+        "inductor energy at peak": _energy(stage, outcome, "inductor", _inductor_energy),
+        "capacitor energy": _energy(stage, outcome, "capacitor", _capacitor_energy),
         "greatest inductor ripple": "unknown" if ripple is None else f"{ripple:.4g} A",
         "junction limit": "none" if junction is None else f"{junction:g} degC",
         "coolant": ", ".join("column" if m.coolant is None else f"{m.coolant:g} degC" for m in plan.mission),
     }
 
 
-def stage_voltages(plan: Plan) -> dict[str, float]:
-    """Return the highest resting voltage at each port, for stored energy [V]."""
-    return {"battery": max(plan.battery.open_circuit_voltage.value), "link": plan.link.voltage}
+def _conductance(plan: Plan, part: StagePart) -> float | None:
+    """Return the conductance of all chips of one part together [S], or None where no resistance is given."""
+    ohms = part_number(plan, part.slot.table, "on_resistance", "resistance")
+    return None if ohms is None else float(part.total) / ohms
 
 
-def _capacitor_energy(plan: Plan, voltages: Mapping[str, float]) -> float:
-    total = 0.0
-    for port, voltage in voltages.items():
-        farad = part_number(plan, f"{port}_capacitor", "capacitance", "capacitance")
-        total += 0.0 if farad is None else 0.5 * farad * voltage * voltage
-    return total
-
-
-def _greatest_peak(outcome: Outcome | None) -> float | None:
+def _energy(
+    stage: Stage, outcome: Outcome | None, kind: str, energy_of: Callable[[StagePart, Outcome], float | None]
+) -> str:
+    """Return the energy that all parts of one kind hold at most, and how many of them have no value."""
     if outcome is None:
+        return "unknown"
+    parts = [part for part in stage.parts if part.slot.kind == kind]
+    found = [energy_of(part, outcome) for part in parts]
+    known = [joule for joule in found if joule is not None]
+    without = len(found) - len(known)
+    return f"{sum(known):.3g} J" + (f", {without} without value" if without else "")
+
+
+def _inductor_energy(part: StagePart, outcome: Outcome) -> float:
+    peak = max(_greatest(outcome, f"{part.slot.name}.current_{side}_a") for side in ("peak", "valley"))
+    return float(0.5 * part.base.inductance * peak * peak * part.slot.copies)
+
+
+def _capacitor_energy(part: StagePart, outcome: Outcome) -> float | None:
+    if part.base is None or part.base.capacitance is None:
         return None
-    found = 0.0
-    for mission in outcome.missions:
-        for column in mission.steps.columns:
-            if column.endswith((".current_peak_a", ".current_valley_a")) and "inductor" in column:
-                found = max(found, float(mission.steps[column].abs().max()))
-    return found
+    own = f"{part.slot.name}.voltage_v"
+    port = f"{part.slot.name.removesuffix('_capacitor')}_voltage_v"
+    volts = _greatest(outcome, own if own in outcome.missions[0].steps.columns else port)
+    return float(0.5 * part.base.capacitance * volts * volts * part.slot.copies)
+
+
+def _greatest(outcome: Outcome, column: str) -> float:
+    return max(float(mission.steps[column].abs().max()) for mission in outcome.missions)
 
 
 def _greatest_ripple(outcome: Outcome) -> float:

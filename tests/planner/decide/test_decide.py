@@ -90,8 +90,10 @@ def test_rounding_is_to_the_safe_side(value, up, down):
 def test_compare_says_what_was_given_and_what_was_changed(commuter):
     found = compare([commuter], topologies=["half-bridge", "interleaved"])
     assert [c.label for c in found.contenders] == ["half-bridge", "interleaved"]
-    assert "chips" in found.unequal
+    assert "chips" not in found.unequal  # kept as a budget
+    assert "inductor energy at peak" in found.unequal
     assert "legs = 1 instead of 2" in found.contenders[0].adaptations[0]
+    assert {"chip voltage rating", "capacitor energy", "junction limit"} <= set(found.contenders[0].fairness)
     assert found.contenders[0].outcome.efficiency < found.contenders[1].outcome.efficiency
 
 
