@@ -50,6 +50,9 @@ def steps_frame(
         if name == "soc" and not battery.tracks_charge:
             continue
         columns[name] = np.concatenate([piece[name] for piece in pieces])
+        if name == "battery_power_available_w" and not np.all(np.isfinite(columns[name])):
+            del columns[name]  # no limit bounds it
+            continue
         if not np.all(np.isfinite(columns[name])):
             raise ValueError(f"column {name} is not finite in step {int(np.argmin(np.isfinite(columns[name])))}")
     columns["curtailed_cause"] = _words(columns["curtailed_cause"], CAUSE_WORDS)
@@ -95,6 +98,7 @@ def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
         "duty_ratio": one(operation.duty_ratio),
         "loss_w": one(block.losses.total),
         "battery_power_w": one(battery.power),
+        "battery_power_available_w": np.where(one(block.direction) == 0.0, 0.0, one(battery.available)),
         "battery_heat_w": one((battery.source_voltage - battery.voltage) * battery.current),
         "switching_frequency_hz": one(operation.timing.frequency),
     }

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 
-from tideleg.battery import Battery
+from tideleg.battery import ALWAYS, Battery
 from tideleg.march import Demand
 from tideleg.mission import Profile, Vehicle, read_profile
 from tideleg.plan import Curve, MissionTable, Plan
@@ -23,7 +23,8 @@ def battery_of(plan: Plan) -> Battery:
     charge = table.resistance if table.resistance_charge is None else table.resistance_charge
     curves = (table.open_circuit_voltage, table.resistance, charge)
     grid = np.unique(np.concatenate([np.asarray(curve.soc, dtype=float) for curve in curves]))
-    voltage, out, into = (_on_grid(grid, curve) for curve in curves)
+    degc = tuple(float(t) for t in np.unique(np.concatenate([np.asarray(curve.degc, dtype=float) for curve in curves])))
+    voltage, out, into = (_on_grid(grid, degc, curve) for curve in curves)
     low, high = table.soc_window
     return Battery(
         grid,
@@ -39,11 +40,26 @@ def battery_of(plan: Plan) -> Battery:
         charge_current_limit=_or_infinite(table.current_limit_charge),
         lowest_voltage=0.0 if table.voltage_min is None else table.voltage_min,
         highest_voltage=_or_infinite(table.voltage_max),
+        degc=degc,
+        discharge_degc=table.discharge_temperature or ALWAYS,
+        charge_degc=table.charge_temperature or ALWAYS,
     )
 
 
-def _on_grid(grid: FloatArray, curve: Curve) -> FloatArray:
-    return np.asarray(np.interp(grid, np.asarray(curve.soc, dtype=float), np.asarray(curve.value, dtype=float)))
+def _on_grid(grid: FloatArray, degc: tuple[float, ...], curve: Curve) -> FloatArray:
+    """Return the curve on the common grid: (G,), or a row for each temperature of any curve (K, G).
+
+    A curve with fewer temperatures than another is straight between its own; `_battery_temperature` keeps the
+    mission inside them.
+    """
+    own = {t: np.interp(grid, np.asarray(c.soc), np.asarray(c.value)) for t, c in curve.by_temperature().items()}
+    if not degc:
+        return np.asarray(own[None])
+    if None in own:
+        return np.tile(own[None], (len(degc), 1))
+    rows = np.stack(list(own.values()))
+    known = np.array([t for t in own if t is not None])
+    return np.stack([np.interp(degc, known, rows[:, i]) for i in range(len(grid))], axis=1)
 
 
 def _or_infinite(limit: float | None) -> float:
@@ -117,7 +133,39 @@ def demand_of(plan: Plan, index: int, profile: Profile, stage: Stage) -> Demand:
     assert link is not None
     assert greatest is not None
     assert least is not None
-    return Demand(profile.power_w, profile.terminals, profile.duration_s, link, boundary, held, greatest, least)
+    degc = _battery_temperature(plan, index, profile, steps)
+    return Demand(profile.power_w, profile.terminals, profile.duration_s, link, boundary, held, greatest, least, degc)
+
+
+def _battery_temperature(plan: Plan, index: int, profile: Profile, steps: int) -> FloatArray | None:
+    """Return the battery's temperature at each step, or None where nothing depends on it.
+
+    Raises
+    ------
+    PlanError
+        If it is needed and not given, or leaves the temperatures that a curve of the battery covers.
+    """
+    battery, mission = plan.battery, plan.mission[index]
+    curves = {key: getattr(battery, key) for key in ("open_circuit_voltage", "resistance", "resistance_charge")}
+    limits = (battery.discharge_temperature, battery.charge_temperature)
+    if all(curve is None or not curve.degc for curve in curves.values()) and not any(limits):
+        return None
+    given = _column(getattr(profile, "battery_degc", None), mission.battery_temperature, steps)
+    key = f"mission.{index}.battery_temperature"
+    if given is None:
+        what = "the battery depends on its temperature; give battery_temperature = '25 degC' or a column battery_degc"
+        raise plan.fault(key, what)
+    for name, curve in curves.items():
+        if curve is not None and curve.degc:
+            low, high = curve.degc[0], curve.degc[-1]
+            coldest, warmest = float(given.min()), float(given.max())
+            if coldest < low or warmest > high:
+                raise plan.fault(
+                    key,
+                    f"the battery is between {coldest:g} and {warmest:g} degC; battery.{name} covers {low:g} to"
+                    f" {high:g} degC and nothing is extrapolated: add a curve",
+                )
+    return given
 
 
 def _column(column: FloatArray | None, constant: float | None, steps: int) -> FloatArray | None:

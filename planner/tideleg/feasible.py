@@ -22,7 +22,7 @@ def refuse_infeasible_rest(stage: Stage, battery: Battery, demand: Demand, missi
     """
     shape = (1, len(demand.power))
     soc = np.full(shape, battery.start_soc)
-    voltage, _ = battery.source(soc, np.ones(shape, dtype=bool))
+    voltage, _ = battery.source(soc, np.ones(shape, dtype=bool), demand.battery_degc)
     zero = np.zeros(shape)
     link = np.broadcast_to(demand.link_voltage, shape)
     every = np.ones(shape, dtype=bool)

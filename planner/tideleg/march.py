@@ -25,6 +25,7 @@ from tideleg.battery import (
     Cause,
     answer,
     at_rest,
+    nodes_of,
     path_of,
     resting_path,
     state_after,
@@ -65,6 +66,7 @@ class Demand:
     boundary : (B, S) temperatures of the thermal boundaries, in the order of the stage's modes [degC]
     held : temperature at which parts without a thermal path are held [degC]
     greatest, least : bounds on the power from the profile [W], infinite where none
+    battery_degc : temperature of the battery [degC]; None where nothing depends on it
     """
 
     power: FloatArray
@@ -75,6 +77,7 @@ class Demand:
     held: FloatArray
     greatest: FloatArray
     least: FloatArray
+    battery_degc: FloatArray | None = None
 
     def block(self, begin: int) -> Demand:
         """Return the block of steps that starts at `begin`."""
@@ -88,6 +91,7 @@ class Demand:
             self.held[cut],
             self.greatest[cut],
             self.least[cut],
+            None if self.battery_degc is None else self.battery_degc[cut],
         )
 
     @property
@@ -197,22 +201,22 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
     temperature = np.broadcast_to(carry.temperature, (len(stage.seated), *shape)).copy()
     search = RootSearch()
     loss = np.zeros(shape)
-    path = resting_path(carry.battery, shape[-1])
+    path = resting_path(carry.battery, shape[-1], nodes_of(battery, demand.allowed, demand.duration))
     path_resistance = np.zeros(shape)
     active = np.broadcast_to(~((demand.power == 0.0) & stage.idles_off), shape)
     choice = _chosen(stage, battery, demand, carry, temperature, active)
     for passes in range(1, MOST_PASSES + 1):
-        given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path)
+        given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path, demand.battery_degc)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, path_resistance, active, choice.code)
         losses = stage.losses(point, temperatures_by_name(stage, temperature, demand))
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
-        still = _battery_still(path, path_of(given))
+        still = _battery_still(path, path_of(given, path))
         temperature = temperature + moved
         loss = search.next(loss, losses.total)
-        path_resistance, path = losses.path_resistance, path_of(given)
+        path_resistance, path = losses.path_resistance, path_of(given, path)
         _refuse_runaway(stage, temperature, losses, demand, elapsed)
         still = still and float(np.max(np.abs(moved), initial=0.0)) < TEMPERATURE_TOLERANCE
         if still and np.all(drift <= ENERGY_TOLERANCE * throughput + POWER_FLOOR * demand.duration.sum()):
@@ -234,8 +238,9 @@ def _chosen(
     path = resting_path(carry.battery, shape[-1])
     if stage.choices:  # twice: the first answer finds the state of charge, the second the voltage there
         request = _wanted(demand, np.zeros(shape))
-        path = path_of(answer(battery, request, demand.duration, carry.battery, path))
-        given = answer(battery, request, demand.duration, carry.battery, path)
+        degc = demand.battery_degc
+        path = path_of(answer(battery, request, demand.duration, carry.battery, path, degc), path)
+        given = answer(battery, request, demand.duration, carry.battery, path, degc)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, np.zeros(shape), active)
         loss = loss_with(stage, point, temperatures_by_name(stage, temperature, demand))
@@ -246,7 +251,7 @@ def _chosen(
 
 def _battery_still(before: BatteryPath, after: BatteryPath) -> bool:
     """Whether neither charge nor RC pairs moved in a pass; what is left is far below the energy tolerance."""
-    charge = np.max(np.abs(after.soc_middle - before.soc_middle))
+    charge = np.max(np.abs(after.soc_nodes - before.soc_nodes))
     pairs = np.max(np.abs(after.pair_start - before.pair_start), initial=0.0)
     return bool(charge < 1e-9 and pairs < 1e-6)
 
@@ -295,7 +300,7 @@ def _finish(
     passes: int,
 ) -> Settled:
     """Solve the battery last, so that in - out - loss is an identity, and evaluate the losses once more as a check."""
-    given = answer(battery, _wanted(demand, losses.total), demand.duration, carry.battery, path)
+    given = answer(battery, _wanted(demand, losses.total), demand.duration, carry.battery, path, demand.battery_degc)
     shape = losses.total.shape
     point = asked._replace(
         battery_voltage=given.voltage, battery_current=given.current, path_resistance=losses.path_resistance

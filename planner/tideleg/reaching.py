@@ -14,7 +14,7 @@ from typing import Any, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from tideleg.battery import Battery, answer, at_rest, path_of, resting_path
+from tideleg.battery import Battery, answer, at_rest, nodes_of, path_of, resting_path
 from tideleg.choices import chosen
 from tideleg.contract import Point, Rest
 from tideleg.demand import battery_of, demand_of, profile_of
@@ -98,8 +98,10 @@ def reach_of(stage: Stage, battery: Battery, demand: Demand, mission: str) -> Re
     rested = at_rest(battery)
     shape = (1, len(demand.power))
     wanted = np.broadcast_to(demand.allowed, shape)
-    path = path_of(answer(battery, wanted, demand.duration, rested, resting_path(rested, shape[-1])))
-    given = answer(battery, wanted, demand.duration, rested, path)
+    path = resting_path(rested, shape[-1], nodes_of(battery, demand.allowed, demand.duration))
+    for _ in range(2):  # the first answer finds the state of charge, the second the voltage there
+        given = answer(battery, wanted, demand.duration, rested, path, demand.battery_degc)
+        path = path_of(given, path)
     link = np.broadcast_to(demand.link_voltage, shape)
     active = np.broadcast_to(~((demand.power == 0.0) & stage.idles_off), shape)
     rest = Rest(demand.duration, given.source_voltage, link, given.current, active, _no_loss(shape))

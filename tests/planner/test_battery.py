@@ -29,7 +29,7 @@ def settled(battery, power, seconds):
     path = resting_path(before, len(power))
     for _ in range(40):
         found = answer(battery, np.atleast_2d(power), seconds, before, path)
-        path = path_of(found)
+        path = path_of(found, path)
     return found
 
 

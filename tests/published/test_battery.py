@@ -96,7 +96,7 @@ def test_bt_08_rc_pulse_at_100_a_from_rest():
     path = resting_path(before, 3)
     for _ in range(5):
         given = answer(pack, np.full((1, 3), 60e3), seconds, before, path)
-        path = path_of(given)
+        path = path_of(given, path)
     assert given.current[0] == pytest.approx([100.0] * 3)
     ends = E - 100.0 * R - given.pair_end[0, 0]
     assert E - 100.0 * R - given.pair_start[0, 0, 0] == pytest.approx(390.0, rel=1e-7)

@@ -26,29 +26,42 @@ def read_curve(given: Any, key: str, folder: Path, files: list[Path]) -> Curve:
     """
     column, dimension = COLUMNS[key]
     if isinstance(given, list):
-        pairs = [_pair(pair, dimension) for pair in given]
-        return _checked(pairs, "point")
+        return _checked([_point(point, dimension) for point in given], [f"point {i}" for i in range(1, len(given) + 1)])
     if isinstance(given, str) and given.lower().endswith(".csv"):
         files.append(folder / given)
         return _from_csv(folder / given, column)
     return Curve((0.0,), (parse(given, dimension),))
 
 
-def _pair(pair: Any, dimension: str) -> tuple[float, float]:
-    if not isinstance(pair, list) or len(pair) != 2:
-        raise ValueError(f"found {pair!r}; give pairs [state of charge, {dimension}], such as [0.5, 'value with unit']")
-    return parse(pair[0], "share"), parse(pair[1], dimension)
+Point = tuple[float, float, float | None]
 
 
-def _checked(pairs: list[tuple[float, float]], word: str) -> Curve:
-    if not pairs:
+def _point(point: Any, dimension: str) -> Point:
+    if not isinstance(point, list) or len(point) not in (2, 3):
+        raise ValueError(
+            f"found {point!r}; give pairs [state of charge, {dimension}], such as [0.5, 'value with unit'], or with"
+            " several temperatures triples [state of charge, value, temperature]"
+        )
+    degc = parse(point[2], "temperature") if len(point) == 3 else None
+    return parse(point[0], "share"), parse(point[1], dimension), degc
+
+
+def _checked(points: list[Point], places: list[str]) -> Curve:
+    """Return the curve if its points are in order; `places` name them in what is said."""
+    if not points:
         raise ValueError("found an empty list; give at least one pair [state of charge, value]")
-    for i, (soc, _) in enumerate(pairs, start=1):
+    if len({degc is None for _, _, degc in points}) > 1:
+        raise ValueError("some points have a temperature and some have none; give it to all or to none")
+    for (soc, _, _), place in zip(points, places, strict=True):
         if not 0.0 <= soc <= 1.0:
-            raise ValueError(f"{word} {i}: state of charge {soc:g} is outside 0 to 1")
-        if i > 1 and soc <= pairs[i - 2][0]:
-            raise ValueError(f"{word} {i}: state of charge {soc:g} does not rise above {pairs[i - 2][0]:g}")
-    return Curve(tuple(s for s, _ in pairs), tuple(v for _, v in pairs))
+            raise ValueError(f"{place}: state of charge {soc:g} is outside 0 to 1")
+    for (before, _, cool), (soc, _, warm), place in zip(points, points[1:], places[1:], strict=False):
+        if cool is not None and warm is not None and warm < cool:
+            raise ValueError(f"{place}: temperature {warm:g} degC is below {cool:g} degC; give the coldest curve first")
+        if cool == warm and soc <= before:
+            raise ValueError(f"{place}: state of charge {soc:g} does not rise above {before:g}")
+    degc = tuple(d for _, _, d in points if d is not None)
+    return Curve(tuple(s for s, _, _ in points), tuple(v for _, v, _ in points), degc)
 
 
 def _from_csv(file: Path, column: str) -> Curve:
@@ -60,19 +73,30 @@ def _from_csv(file: Path, column: str) -> Curve:
         raise PlanError("the file is not UTF-8 text; save it so", file=file) from None
     rows = list(csv.reader(text.splitlines()))
     header = [cell.strip() for cell in rows[0]] if rows else []
-    if header != ["soc", column]:
-        raise PlanError(f"found the columns {header}; wanted are soc,{column}", file=file, line=1)
-    pairs: list[tuple[float, float]] = []
+    if header not in (["soc", column], ["soc", column, "temperature_degc"]):
+        what = f"found the columns {header}; wanted are soc,{column} and, for several temperatures, temperature_degc"
+        raise PlanError(what, file=file, line=1)
+    points: list[Point] = []
+    lines: list[int] = []
     for line, row in enumerate(rows[1:], start=2):
         if not row:
             continue
         try:
-            soc, value = (parse(float(cell), "share") for cell in row)
+            soc, value, *rest = (parse(float(cell), "share") for cell in row)
+            (degc,) = rest or (None,)
         except ValueError:
-            raise PlanError(f"found {','.join(row)!r}; wanted are two finite numbers", file=file, line=line) from None
-        if not 0.0 <= soc <= 1.0 or (pairs and soc <= pairs[-1][0]):
-            raise PlanError(f"state of charge {soc:g} must rise from row to row within 0 to 1", file=file, line=line)
-        pairs.append((soc, value))
-    if not pairs:
+            wanted = "two" if len(header) == 2 else "three"
+            raise PlanError(
+                f"found {','.join(row)!r}; wanted are {wanted} finite numbers", file=file, line=line
+            ) from None
+        if (degc is None) != (len(header) == 2):
+            raise PlanError(f"found {len(row)} cells; the header has {len(header)}", file=file, line=line)
+        points.append((soc, value, degc))
+        lines.append(line)
+        try:
+            _checked(points[-2:], [f"line {n}" for n in lines[-2:]])
+        except ValueError as error:
+            raise PlanError(str(error).partition(": ")[2] or str(error), file=file, line=line) from None
+    if not points:
         raise PlanError("the file holds no rows", file=file)
-    return Curve(tuple(s for s, _ in pairs), tuple(v for _, v in pairs))
+    return _checked(points, [f"line {line}" for line in lines])

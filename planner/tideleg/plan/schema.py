@@ -20,7 +20,8 @@ _BASES: dict[PartKind, list[type[BaseModel]]] = {
 }
 
 _CURVE = {
-    "description": "a constant with unit, pairs [[state of charge, value], ...], or a CSV file name",
+    "description": "a constant with unit, pairs [[state of charge, value], ...], triples with a temperature, or a CSV"
+    " file name",
     "anyOf": [{"type": "number"}, {"type": "string"}, {"type": "array", "items": {"type": "array", "minItems": 2}}],
 }
 

@@ -23,7 +23,12 @@ class Table(BaseModel):
 
 
 class BatteryTable(Table):
-    """[battery]; pack values after reading, also where cells were given."""
+    """[battery]; pack values after reading, also where cells were given.
+
+    discharge_temperature, charge_temperature : between which it may give and take current
+    aged_resistance, aged_capacity : of the aged pack that is run beside the new one, over the new values
+    ripple_inductance : of the way to the battery, for the share of the ripple that reaches it
+    """
 
     open_circuit_voltage: Curve
     resistance: Curve = Curve((0.0,), (0.0,))
@@ -37,6 +42,11 @@ class BatteryTable(Table):
     current_limit_charge: Annotated[q.Current, Positive] | None = None
     voltage_min: Annotated[q.Voltage, Positive] | None = None
     voltage_max: Annotated[q.Voltage, Positive] | None = None
+    discharge_temperature: tuple[q.Temperature, q.Temperature] | None = None
+    charge_temperature: tuple[q.Temperature, q.Temperature] | None = None
+    aged_resistance: Annotated[q.Share, Field(ge=1.0)] = 1.7
+    aged_capacity: Annotated[q.Share, Field(gt=0.0, le=1.0)] = 0.8
+    ripple_inductance: Annotated[q.Inductance, NotNegative] = 0.0
     rc_pairs: tuple[tuple[Annotated[q.Resistance, Positive], Annotated[q.Time, Positive]], ...] = ()
 
     @model_validator(mode="after")
@@ -56,13 +66,23 @@ class BatteryTable(Table):
         if any(curve is not None and min(curve.value) < 0.0 for curve in curves[1:]):
             raise ValueError("resistance must not be negative")
         self._limits_leave_room()
-        for curve in curves:
-            if curve is not None and len(curve.soc) > 1 and (curve.soc[0] > low or curve.soc[-1] < high):
+        self._curves_cover_the_window()
+        return self
+
+    def _curves_cover_the_window(self) -> None:
+        """Refuse what would have to be extrapolated, and ranges of temperature that hold nothing."""
+        low, high = self.soc_window
+        curves = (self.open_circuit_voltage, self.resistance, self.resistance_charge)
+        for curve in (one for family in curves if family is not None for one in family.by_temperature().values()):
+            if len(curve.soc) > 1 and (curve.soc[0] > low or curve.soc[-1] < high):
                 raise ValueError(
                     f"a curve covers the state of charge from {curve.soc[0]:g} to {curve.soc[-1]:g}, not the whole"
                     f" soc_window [{low:g}, {high:g}]; nothing is extrapolated: add points or narrow the window"
                 )
-        return self
+        for key in ("discharge_temperature", "charge_temperature"):
+            allowed = getattr(self, key)
+            if allowed is not None and allowed[0] >= allowed[1]:
+                raise ValueError(f"{key}: found [{allowed[0]:g}, {allowed[1]:g}] degC; give the lower one first")
 
     def _limits_leave_room(self) -> None:
         """Refuse voltage limits that the resting battery passes at every state of charge: it could never work."""
@@ -215,6 +235,7 @@ class MissionTable(Table):
     sign: Literal["discharge", "charge"] = "discharge"
     coolant: q.Temperature | None = None
     ambient: q.Temperature | None = None
+    battery_temperature: q.Temperature | None = None
     start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
 
 

@@ -160,7 +160,7 @@ def test_cells_become_a_pack(plan_file):
 @pytest.mark.parametrize(
     ("text", "said"),
     [
-        ("soc,open_circuit_voltage_v\n0,300\n0,310\n", "line 3: state of charge 0 must rise"),
+        ("soc,open_circuit_voltage_v\n0,300\n0,310\n", "line 3: state of charge 0 does not rise"),
         ("soc,open_circuit_voltage_v\n0,300\nx,310\n", "line 3: found 'x,310'"),
         ("soc,volt\n0,300\n", "wanted are soc,open_circuit_voltage_v"),
         ("soc,open_circuit_voltage_v\n", "no rows"),
