@@ -104,6 +104,10 @@ def battery_entry(battery: Battery, demand: Demand, steps: pd.DataFrame) -> Batt
         greatest_soc=None if soc is None else float(max(soc.max(), battery.start_soc)),
         throughput_ah=coulombs / 3600.0,
         equivalent_full_cycles=None if soc is None else coulombs / (2.0 * battery.capacity),
+        throughput_wh=float(np.sum(np.abs(steps["battery_power_w"].to_numpy()) * demand.duration)) / 3600.0,
+        stored_change_j=-float(
+            np.sum((steps["battery_power_w"].to_numpy() + steps["battery_heat_w"].to_numpy()) * demand.duration)
+        ),
         least_voltage_v=float(voltage.min()),
         greatest_voltage_v=float(voltage.max()),
         greatest_discharge_a=float(max(current.max(), 0.0)),

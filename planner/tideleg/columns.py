@@ -13,6 +13,7 @@ import numpy as np
 from tideleg.battery import CAUSE_WORDS, Battery
 from tideleg.contract import CONDUCTION, Chooser
 from tideleg.march import Demand, Settled
+from tideleg.ripple import battery_ripple
 from tideleg.stage import Stage, StagePart
 
 if TYPE_CHECKING:
@@ -40,7 +41,7 @@ def steps_frame(
     """
     import pandas as pd
 
-    pieces = [_block_columns(stage, block, candidate) for block in blocks]
+    pieces = [_block_columns(stage, block, candidate, battery.ripple_inductance) for block in blocks]
     columns: dict[str, Any] = {
         "time_s": np.concatenate([[0.0], np.cumsum(demand.duration)[:-1]]),
         "duration_s": demand.duration,
@@ -75,7 +76,7 @@ def _words(codes: FloatArray, words: tuple[str, ...]) -> pd.Categorical[str]:
     return pd.Categorical.from_codes(codes.astype(np.int64), pd.Index(list(words)))
 
 
-def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
+def _block_columns(stage: Stage, block: Settled, candidate: int, battery_henry: float) -> Columns:
     """Return every column of one block after the demand's own, in order."""
     operation, battery = block.checked.operation, block.battery
     shape = block.losses.total.shape
@@ -109,7 +110,18 @@ def _block_columns(stage: Stage, block: Settled, candidate: int) -> Columns:
         if part.slot.kind in _READERS:
             columns |= _READERS[part.slot.kind](part, block, one)
         columns |= _loss_and_temperature(stage, part, block, candidate, one)
+        if part.slot.name == "battery_capacitor":
+            columns |= _battery_ripple(part, battery_henry, block, one)
     return columns
+
+
+def _battery_ripple(part: StagePart, henry: float, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
+    """Return the ripple current that reaches the battery; nothing where the port capacitor has no capacitance given."""
+    if part.base is None or part.base.capacitance is None:
+        return {}
+    exchange = block.checked.operation.exchanges["battery_capacitor"]
+    rms, swing = battery_ripple(exchange, part.base.capacitance, block.battery.resistance, henry)
+    return {"battery_ripple.current_rms_a": one(rms), "battery_ripple.current_a": one(swing)}
 
 
 def _switch(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:

@@ -43,6 +43,7 @@ def battery_of(plan: Plan) -> Battery:
         degc=degc,
         discharge_degc=table.discharge_temperature or ALWAYS,
         charge_degc=table.charge_temperature or ALWAYS,
+        ripple_inductance=table.ripple_inductance,
     )
 
 

@@ -107,6 +107,10 @@ def _temperature_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterat
 
 
 def _current_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[LimitCheck]:
+    ripple = "battery_ripple.current_rms_a"
+    if limits.battery_ripple_current is not None and all(ripple in steps for steps in seen.steps.values()):
+        value, *when = _greatest(seen, ripple)
+        yield _upper("battery ripple current", "battery", value, limits.battery_ripple_current, "A", when)
     for part in stage.parts:
         name = part.slot.name
         if part.slot.kind == "inductor":

@@ -92,7 +92,11 @@ class ThermalEntry:
 
 @dataclass(frozen=True)
 class BatteryEntry:
-    """The battery over one pass of one mission; soc fields are None where the state of charge is not modelled."""
+    """The battery over one pass of one mission; soc fields are None where the state of charge is not modelled.
+
+    throughput_wh : at the terminals, both ways [Wh]
+    stored_change_j : energy at open-circuit voltage put in less taken out [J]
+    """
 
     start_soc: float | None
     end_soc: float | None
@@ -104,6 +108,8 @@ class BatteryEntry:
     greatest_voltage_v: float
     greatest_discharge_a: float
     greatest_charge_a: float
+    throughput_wh: float = 0.0
+    stored_change_j: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -227,6 +233,32 @@ class Coarser:
 
 
 @dataclass(frozen=True)
+class PackAnswer:
+    """What the plan comes to with one pack: the new one, or the aged one that is run beside it.
+
+    pack : "new", or what makes the other one aged
+    holds : whether every limit holds
+    binding : name and part of the limit that binds, or why there is no answer
+    used : share of that limit in use [-]; None where there is no answer, as in all that follows
+    curtailed_share : requested energy that is not delivered, over all missions [-]
+    least_voltage_v : lowest terminal voltage
+    end_soc : state of charge at the end of each mission, by its name [-]; empty where it is not modelled
+    battery_heat_share : energy lost in the pack over its throughput [-]
+    """
+
+    pack: str
+    holds: bool
+    binding: str
+    used: float | None
+    greatest_junction_degc: float | None
+    efficiency: float | None
+    curtailed_share: float | None
+    least_voltage_v: float | None
+    end_soc: Mapping[str, float]
+    battery_heat_share: float | None
+
+
+@dataclass(frozen=True)
 class Inputs:
     """What went in, so that a run can be repeated: file -> SHA-256, package -> version, seed (None: no chance)."""
 
@@ -264,6 +296,7 @@ class Outcome:
     inputs: Inputs
     plan_file: Path | None = None
     coarser: tuple[Coarser, ...] = ()
+    packs: tuple[PackAnswer, ...] = ()
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -308,6 +341,7 @@ class Outcome:
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
+            "packs": [_plain(pack) for pack in self.packs],
             "resolution": [_plain(one) for one in self.coarser],
             "changes": [_plain(change) for change in self.changes],
             "safety": _plain(self.safety),

@@ -170,7 +170,8 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
     gains = {name: np.max([b.gain[:, 0].max(axis=-1) for b in r.blocks], axis=0) for name, r in runs.items()}
     thermal = thermal_entries(stage, {name: r.demand for name, r in runs.items()}, gains, steps)
     holds = all(check.holds for check in checks) and not unchecked
-    warnings = warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal)
+    results = tuple(r.result for r in runs.values())
+    warnings = warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal, results)
     cautions = cautions_of(stage, [(name, r.demand, r.blocks) for name, r in runs.items()])
     return Outcome(
         title=plan.title,
@@ -178,7 +179,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         verdict=verdict_sentence(checks, unchecked),
         binding=binding,
         limits=checks,
-        missions=tuple(r.result for r in runs.values()),
+        missions=results,
         thermal=thermal,
         parts=part_entries(plan, stage),
         stage_facts=stage_facts(plan, stage),

@@ -9,7 +9,7 @@ import numpy as np
 from tideleg.battery import Battery
 from tideleg.limits import LimitCheck
 from tideleg.march import Demand, Settled
-from tideleg.outcome import ThermalEntry
+from tideleg.outcome import MissionResult, ThermalEntry
 from tideleg.stage import Stage
 
 
@@ -39,8 +39,33 @@ def quantity_text(value: float, unit: str) -> str:
     return f"{100.0 * value:.3g} %" if unit == "share" else f"{value:.4g} {unit}"
 
 
+CHARGE_SHARE = 0.01
+"""Energy left in or taken from the battery, over its throughput, beyond which a reader is warned [-]."""
+
+
+def _charge_warnings(results: Iterable[MissionResult]) -> list[str]:
+    """Return one sentence for each mission that ends with another charge than it began with."""
+    found = []
+    for result in results:
+        begin, end = result.battery.start_soc, result.battery.end_soc
+        if begin is None or end is None or result.energy.throughput_j <= 0.0:
+            continue
+        kept = result.battery.stored_change_j / result.energy.throughput_j
+        if abs(kept) > CHARGE_SHARE:
+            found.append(
+                f"{result.name}: the state of charge moves from {100.0 * begin:.1f} to {100.0 * end:.1f} %, which is"
+                f" {100.0 * abs(kept):.3g} % of the throughput: the mission does not repeat as it is, and efficiencies"
+                " hold for this pass only"
+            )
+    return found
+
+
 def warnings_of(
-    stage: Stage, battery: Battery, demands: Iterable[tuple[str, Demand]], thermal: tuple[ThermalEntry, ...]
+    stage: Stage,
+    battery: Battery,
+    demands: Iterable[tuple[str, Demand]],
+    thermal: tuple[ThermalEntry, ...],
+    results: Iterable[MissionResult] = (),
 ) -> tuple[str, ...]:
     """Return what a reader must know before trusting the numbers."""
     found = [
@@ -51,6 +76,7 @@ def warnings_of(
     ]
     if not battery.tracks_charge:
         found.append("the battery has no capacity given: it is an ideal source and its state of charge is not modelled")
+    found += _charge_warnings(results)
     if stage.modes is not None:
         shortest = float(np.min(stage.modes.time_constants, initial=np.inf))
         for name, demand in demands:

@@ -378,3 +378,67 @@ def test_a_leg_that_rests_costs_nothing(tmp_path):
     assert one.missions[0].energy.loss_j == pytest.approx(alone.missions[0].energy.loss_j, rel=1e-9)
     assert one.steps["upper_switch.loss_w"].tolist() == [0.0]
     assert one.steps["lead_upper_switch.loss_w"].tolist() == pytest.approx(alone.steps["upper_switch.loss_w"].tolist())
+
+
+CELLS = {
+    "open_circuit_voltage": [
+        [0.0, "340 V", "-10 degC"],
+        [1.0, "400 V", "-10 degC"],
+        [0, "350 V", 25],
+        [1, "410 V", 25],
+    ],
+    "resistance": [[0.5, "0.4 ohm", "-10 degC"], [0.5, "0.1 ohm", "25 degC"]],
+    "capacity": "20 Ah",
+    "start_soc": "50 %",
+}
+
+
+def test_a_battery_depends_on_its_temperature(tmp_path):
+    rows = "time_s,power_w\n0,20000\n1,0\n"
+    mission = {"profile": "p.csv"}
+    warm = ideal(tmp_path, rows, battery=CELLS, mission=[{**mission, "battery_temperature": "25 degC"}])
+    cold = ideal(tmp_path, rows, battery=CELLS, mission=[{**mission, "battery_temperature": "-10 degC"}])
+    assert warm.steps["battery_voltage_v"][0] == pytest.approx(380 - 0.1 * warm.steps["battery_current_a"][0], rel=1e-4)
+    assert cold.steps["battery_voltage_v"][0] == pytest.approx(370 - 0.4 * cold.steps["battery_current_a"][0], rel=1e-4)
+    with pytest.raises(
+        InputError, match=r"mission.0.battery_temperature: .*covers -10 to 25 degC and nothing is extrapol"
+    ):
+        ideal(tmp_path, rows, battery=CELLS, mission=[{**mission, "battery_temperature": "30 degC"}])
+    with pytest.raises(InputError, match="give battery_temperature"):
+        ideal(tmp_path, rows, battery=CELLS)
+
+
+def test_a_cold_battery_is_curtailed_and_says_why(tmp_path):
+    battery = {"open_circuit_voltage": "400 V", "resistance": "50 mohm", "charge_temperature": ["0 degC", "45 degC"]}
+    mission = [{"profile": "p.csv", "battery_temperature": "-5 degC"}]
+    outcome = ideal(tmp_path, "time_s,power_w\n0,20000\n1,-20000\n2,0\n", battery=battery, mission=mission)
+    assert outcome.steps["curtailed_cause"].tolist() == ["", "battery temperature"]
+    assert outcome.steps["battery_power_available_w"].tolist() == [pytest.approx(400**2 / 0.2), 0.0]
+    energy = outcome.missions[0].energy
+    assert energy.requested_j == pytest.approx(energy.link_out_j + energy.link_in_j + energy.curtailed_j, rel=1e-9)
+
+
+def test_a_mission_that_leaves_the_battery_emptier_is_warned_of(tmp_path):
+    battery = {"open_circuit_voltage": "400 V", "capacity": "10 Ah", "start_soc": "50 %"}
+    one_way = ideal(tmp_path, "time_s,power_w\n0,20000\n60,0\n", battery=battery)
+    assert any("state of charge moves from 50.0 to" in warning for warning in one_way.warnings)
+    assert one_way.missions[0].battery.stored_change_j == pytest.approx(-20000 * 60, rel=1e-6)
+    back = ideal(tmp_path, "time_s,power_w\n0,20000\n60,-20000\n120,0\n", battery=battery)
+    assert not any("state of charge moves" in warning for warning in back.warnings)
+
+
+def test_battery_ripple_is_held_against_its_limit(tmp_path):
+    stage = {**IDEAL["stage"], "battery_capacitor": {"capacitance": "100 uF"}}
+    battery = {"open_circuit_voltage": "400 V", "resistance": "50 mohm"}
+    outcome = ideal(
+        tmp_path,
+        "time_s,power_w\n0,20000\n1,0\n",
+        stage=stage,
+        battery=battery,
+        limits={"battery_ripple_current": "1 A"},
+    )
+    check = next(c for c in outcome.limits if c.name == "battery ripple current")
+    # 20 A of triangle at 20 kHz: the capacitor's 80 mohm against 50 mohm of battery.
+    share = (1 / (2 * np.pi * 20e3 * 100e-6)) / np.hypot(1 / (2 * np.pi * 20e3 * 100e-6), 0.05)
+    assert check.value == pytest.approx(20.0 / np.sqrt(12.0) * share, rel=0.02)
+    assert not check.holds

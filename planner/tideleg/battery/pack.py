@@ -55,6 +55,7 @@ class Battery:
     discharge_current_limit, charge_current_limit : magnitudes [A], infinite where not limited
     lowest_voltage, highest_voltage : at the terminals [V]; 0 and infinite where not limited
     degc : (K,) temperatures of the rows, increasing [degC]; empty where nothing depends on temperature
+    ripple_inductance : of the way to it, for the ripple that reaches it [H]
     discharge_degc, charge_degc : temperatures between which it may give and take current [degC]
     """
 
@@ -74,6 +75,7 @@ class Battery:
     degc: tuple[float, ...] = ()
     discharge_degc: tuple[float, float] = ALWAYS
     charge_degc: tuple[float, float] = ALWAYS
+    ripple_inductance: float = 0.0
 
     @property
     def tracks_charge(self) -> bool:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tideleg.plan import Curve, Plan
+from tideleg.plan import Plan
 from tideleg.quantity import parse
 
 
@@ -45,16 +45,19 @@ def with_warmer_coolant(plan: Plan, kelvin: float) -> Plan:
     return plan.model_copy(update={"mission": missions})
 
 
-def with_battery_resistance(plan: Plan, factor: float) -> Plan:
-    """Return the plan with the battery's resistance, both directions, multiplied by `factor` [-]."""
-    update: dict[str, object] = {"resistance": _scaled(plan.battery.resistance, factor)}
-    if plan.battery.resistance_charge is not None:
-        update["resistance_charge"] = _scaled(plan.battery.resistance_charge, factor)
-    return plan.model_copy(update={"battery": plan.battery.model_copy(update=update)})
-
-
-def _scaled(curve: Curve, factor: float) -> Curve:
-    return Curve(soc=curve.soc, value=tuple(factor * value for value in curve.value))
+def with_aged_battery(plan: Plan) -> Plan:
+    """Return the plan with its aged pack: every resistance grown, RC pairs included, and the capacity shrunk."""
+    battery = plan.battery
+    factor = battery.aged_resistance
+    update: dict[str, object] = {
+        "resistance": battery.resistance.scaled(factor),
+        "rc_pairs": tuple((factor * ohms, seconds) for ohms, seconds in battery.rc_pairs),
+    }
+    if battery.resistance_charge is not None:
+        update["resistance_charge"] = battery.resistance_charge.scaled(factor)
+    if battery.capacity is not None:
+        update["capacity"] = battery.aged_capacity * battery.capacity
+    return plan.model_copy(update={"battery": battery.model_copy(update=update)})
 
 
 def stage_number(plan: Plan, key: str, dimension: str) -> float | None:

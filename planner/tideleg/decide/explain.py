@@ -8,11 +8,11 @@ from collections.abc import Iterator
 from tideleg.decide.changes import (
     part_number,
     stage_number,
-    with_battery_resistance,
     with_part,
     with_stage,
     with_warmer_coolant,
 )
+from tideleg.decide.packs import both_packs
 from tideleg.errors import InputError, NoEquilibriumError
 from tideleg.outcome import Change, Coarser, Outcome
 from tideleg.plan import Plan
@@ -23,14 +23,11 @@ WARMER_K = 10.0
 MERGED = (2, 5)
 """Numbers of neighbouring steps that are merged to test how far the profile's resolution limits the answer."""
 
-AGED_RESISTANCE = 1.7
-"""Growth of the battery's resistance at its end of life [-]; common practice, no source."""
-
 
 def explained(
     plan: Plan, outcome: Outcome, *, registry: Registry | None = None, progress: Progress | None = None
 ) -> Outcome:
-    """Return the outcome with its `changes` and `coarser` filled: one re-run for each."""
+    """Return the outcome with its `changes`, `coarser` and `packs` filled: one re-run for each."""
     changes = []
     for words, variant in _variants(plan):
         try:
@@ -43,7 +40,12 @@ def explained(
             continue
         changes.append(_change(words, other))
     coarser = tuple(_coarser(plan, outcome, merged, registry, progress) for merged in MERGED)
-    return dataclasses.replace(outcome, changes=tuple(changes), coarser=tuple(c for c in coarser if c is not None))
+    return dataclasses.replace(
+        outcome,
+        changes=tuple(changes),
+        coarser=tuple(c for c in coarser if c is not None),
+        packs=both_packs(plan, outcome, registry=registry, progress=progress),
+    )
 
 
 def _coarser(
@@ -91,8 +93,6 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     chips = plan.stage.parts.get("switch", {}).get("in_parallel", 1)
     if "switch" in plan.stage.parts and isinstance(chips, int):
         yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)
-    if any(value > 0.0 for value in plan.battery.resistance.value):
-        yield f"battery aged: resistance times {AGED_RESISTANCE:g}", with_battery_resistance(plan, AGED_RESISTANCE)
 
 
 def _change(words: str, other: Outcome) -> Change:

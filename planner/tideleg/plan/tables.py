@@ -147,6 +147,7 @@ class LimitsTable(Table):
     ripple_ratio: Annotated[q.Share, Positive] | None = None
     voltage_utilisation: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
     battery_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
+    battery_ripple_current: Annotated[q.Current, Positive] | None = None
     link_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
     battery_capacitor_current: Annotated[q.Current, Positive] | None = None
     link_capacitor_current: Annotated[q.Current, Positive] | None = None

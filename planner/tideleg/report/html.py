@@ -41,6 +41,8 @@ def _page_one(outcome: Outcome) -> dict[str, Any]:
         "limit_heads": words.LIMIT_HEADS,
         "limits": [words.limit_cells(check) for check in outcome.limits],
         "change_heads": words.CHANGE_HEADS,
+        "pack_heads": ("", *(pack.pack for pack in outcome.packs)),
+        "packs": words.pack_rows(outcome)[1:] if outcome.packs else [],
         "changes": [words.change_cells(change) for change in outcome.changes],
         "sure": words.sureness(outcome),
         "danger": danger_rows(outcome),

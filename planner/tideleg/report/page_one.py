@@ -46,6 +46,10 @@ def print_page(outcome: Outcome, console: Console) -> None:
     if outcome.changes:
         _section(console, "What would change the answer (each line is a run of every mission)")
         _changes(console, outcome.changes)
+    if outcome.packs:
+        _section(console, "New and aged battery, side by side")
+        heads, *rows = words.pack_rows(outcome)
+        _rows(console, rows, ("", *heads[1:]))
     _section(console, "How sure is it")
     _list(console, words.sureness(outcome))
     _section(console, "Not modelled")

@@ -3,10 +3,22 @@
 from __future__ import annotations
 
 from tideleg.limits import LimitCheck
-from tideleg.outcome import Change, Coarser, Outcome
+from tideleg.outcome import Change, Coarser, MissionResult, Outcome, PackAnswer
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
+PACK_HEADS = (
+    "pack",
+    "verdict",
+    "then binds",
+    "in use",
+    "hottest junction",
+    "efficiency",
+    "curtailed",
+    "least voltage",
+    "state of charge at the end",
+    "lost in the pack",
+)
 CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
 BROKEN = "DOES NOT HOLD"
 
@@ -71,6 +83,28 @@ def change_cells(change: Change) -> tuple[str, ...]:
         share_text(change.used),
         "-" if change.greatest_junction_degc is None else f"{change.greatest_junction_degc:.1f} degC",
         "-" if change.efficiency is None else efficiency_text(change.efficiency),
+    )
+
+
+def pack_rows(outcome: Outcome) -> list[tuple[str, ...]]:
+    """Return the new and the aged pack as columns beside the labels of `PACK_HEADS`."""
+    columns = [_pack_cells(pack) for pack in outcome.packs]
+    return list(zip(PACK_HEADS, *columns, strict=True))
+
+
+def _pack_cells(pack: PackAnswer) -> tuple[str, ...]:
+    ends = ", ".join(f"{name} {100.0 * soc:.1f} %" for name, soc in pack.end_soc.items())
+    return (
+        pack.pack,
+        "holds" if pack.holds else BROKEN,
+        pack.binding or "no limit stated",
+        share_text(pack.used),
+        "-" if pack.greatest_junction_degc is None else f"{pack.greatest_junction_degc:.1f} degC",
+        "-" if pack.efficiency is None else efficiency_text(pack.efficiency),
+        "-" if pack.curtailed_share is None else f"{100.0 * pack.curtailed_share:.3g} %",
+        "-" if pack.least_voltage_v is None else f"{pack.least_voltage_v:.4g} V",
+        ends or "-",
+        "-" if pack.battery_heat_share is None else f"{100.0 * pack.battery_heat_share:.2f} % of its throughput",
     )
 
 
@@ -209,6 +243,12 @@ def energy_scale(greatest_j: float) -> tuple[float, str]:
     return (3.6e3, "Wh") if greatest_j >= 3.6e3 else (1.0, "J")
 
 
+def _charge_moved(mission: MissionResult) -> str:
+    """Return how far the state of charge moved, which stands beside every efficiency: energy left in the battery."""
+    begin, end = mission.battery.start_soc, mission.battery.end_soc
+    return "not modelled" if begin is None or end is None else f"{100.0 * (end - begin):+.2f} % of the capacity"
+
+
 def energy_rows(outcome: Outcome) -> list[tuple[str, ...]]:
     """Return the energy accounts as rows, a column a mission."""
     accounts = [m.energy for m in outcome.missions]
@@ -224,6 +264,7 @@ def energy_rows(outcome: Outcome) -> list[tuple[str, ...]]:
         "lost in the battery": "battery_heat_j",
     }
     rows = [(label, *(f"{getattr(a, key) / size:.5g} {unit}" for a in accounts)) for label, key in labels.items()]
+    rows.append(("charge moved by one pass", *(_charge_moved(m) for m in outcome.missions)))
     rows.append(("closure: battery - link - loss, of throughput", *(f"{a.residual:.1e}" for a in accounts)))
     rows.append(("closure with losses computed anew", *(f"{a.recomputed_residual:.1e}" for a in accounts)))
     return rows

@@ -10,7 +10,7 @@ from tideleg.decide.compare import compare
 from tideleg.decide.explain import explained
 from tideleg.decide.size import size
 from tideleg.decide.trial import rounded_down, rounded_up
-from tideleg.plan import load_plan
+from tideleg.plan import load_plan, plan_from_mapping
 from tideleg.running import run
 
 SCENARIOS = Path(__file__).parents[3] / "profiles"
@@ -120,4 +120,33 @@ def test_every_change_is_a_run_of_its_own(commuter):
     assert warmer.greatest_junction_degc > hottest + 9.0
     assert by_words["switching frequency 25 % higher"].efficiency < outcome.efficiency
     assert by_words["3 chips in parallel instead of 2"].greatest_junction_degc < hottest
-    assert len(outcome.changes) == 6
+    assert len(outcome.changes) == 5
+
+
+def test_the_aged_pack_stands_beside_the_new_one(commuter):
+    plan = load_plan(commuter)
+    new, aged = explained(plan, run(plan)).packs
+    assert (new.pack, aged.pack) == ("new", "aged: resistance times 1.7, capacity 80 %")
+    assert aged.battery_heat_share > 1.5 * new.battery_heat_share
+    assert aged.least_voltage_v < new.least_voltage_v
+    (name,) = new.end_soc
+    assert aged.end_soc[name] < new.end_soc[name]
+
+
+def test_an_ideal_battery_does_not_age(tmp_path):
+    (tmp_path / "p.csv").write_text("time_s,power_w\n0,1000\n1,0\n")
+    plan = plan_from_mapping(
+        {
+            "title": "ideal",
+            "battery": {"open_circuit_voltage": "400 V"},
+            "link": {"voltage": "800 V"},
+            "stage": {
+                "topology": "half-bridge",
+                "switching_frequency": "20 kHz",
+                "inductor": {"inductance": "500 uH"},
+            },
+            "mission": [{"profile": "p.csv"}],
+        },
+        folder=tmp_path,
+    )
+    assert explained(plan, run(plan)).packs == ()
