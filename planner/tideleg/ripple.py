@@ -30,15 +30,16 @@ def battery_ripple(exchange: Exchange, farad: float, ohms: Values, henry: float)
     -----
     The peak-to-peak value is that of the sum of the harmonics over one period, sampled at 64 instants.
     """
-    square: Values = 0.0
-    angles = 2.0 * np.pi * np.arange(64) / 64.0
-    sampled: FloatArray | float = 0.0
+    amplitudes = []
     for order in range(1, HARMONICS + 1):
         omega = 2.0 * np.pi * order * exchange.frequency
         capacitor = 1.0 / (1j * omega * farad)
         share = capacitor / (capacitor + ohms + 1j * omega * henry)
-        amplitude = exchange.current.harmonic(order) * share
-        square = square + 0.5 * np.abs(amplitude) ** 2
-        turn = np.exp(1j * order * angles)
-        sampled = sampled + np.real(np.multiply.outer(turn, amplitude))
-    return np.sqrt(np.asarray(square)), np.asarray(np.ptp(np.asarray(sampled), axis=0))
+        amplitudes.append(exchange.current.harmonic(order) * share)
+    found = np.stack(np.broadcast_arrays(*amplitudes))
+    turns = np.exp(2j * np.pi * np.outer(np.arange(64) / 64.0, np.arange(1, HARMONICS + 1)))
+    # One product for all instants: real and imaginary part apart, since only the real part of it is wanted.
+    flat = found.reshape(HARMONICS, -1)
+    sampled = turns.real @ flat.real - turns.imag @ flat.imag
+    rms = np.sqrt(0.5 * np.sum(np.abs(found) ** 2, axis=0))
+    return rms, np.ptp(sampled, axis=0).reshape(rms.shape)
