@@ -11,9 +11,10 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from tideleg.battery import CAUSE_WORDS, Battery
-from tideleg.contract import CONDUCTION, Chooser
+from tideleg.contract import CONDUCTION, DISCONTINUOUS, Chooser
 from tideleg.march import Demand, Settled
 from tideleg.ripple import battery_ripple
+from tideleg.rolloff import LinkageCurve, effective_inductance_of, true_extremes
 from tideleg.stage import Stage, StagePart
 
 if TYPE_CHECKING:
@@ -142,13 +143,29 @@ def _switch(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -
 def _inductor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
     name = part.slot.name
     current = block.checked.operation.windings[name].current
+    valley, peak = _extremes(part, block)
     return {
         f"{name}.current_mean_a": one(current.mean()),
         f"{name}.current_rms_a": one(current.rms()),
         f"{name}.current_ripple_a": one(current.peak_to_peak()),
-        f"{name}.current_peak_a": one(current.peak()),
-        f"{name}.current_valley_a": one(current.valley()),
+        f"{name}.current_peak_a": one(peak),
+        f"{name}.current_valley_a": one(valley),
     }
+
+
+def _extremes(part: StagePart, block: Settled) -> tuple[FloatArray, FloatArray]:
+    """Return valley and peak of a winding; where its inductance falls with current, those of the bent current."""
+    operation = block.checked.operation
+    current = operation.windings[part.slot.name].current
+    valley, peak = current.valley(), current.peak()
+    points = getattr(part.base, "inductance_curve", None)
+    if points is None:
+        return valley, peak
+    curve = LinkageCurve.of(points)
+    henry = effective_inductance_of(curve, valley, peak)
+    lower, upper = true_extremes(curve, valley, peak, henry)
+    rests = operation.conduction == DISCONTINUOUS  # it begins and ends at zero, and its peak is set by the charge
+    return np.where(rests, valley, lower), np.where(rests, peak, upper)
 
 
 def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:

@@ -70,6 +70,8 @@ def check_limits(limits: LimitsTable, stage: Stage, trip_voltage: float | None, 
     found = [
         *_temperature_checks(limits, stage, seen),
         *_current_checks(limits, stage, seen),
+        *_curve_checks(stage, seen),
+        *_battery_checks(limits, seen),
         *_voltage_checks(limits, stage, trip_voltage, seen),
         *_mission_checks(limits, seen),
     ]
@@ -107,10 +109,6 @@ def _temperature_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterat
 
 
 def _current_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[LimitCheck]:
-    ripple = "battery_ripple.current_rms_a"
-    if limits.battery_ripple_current is not None and all(ripple in steps for steps in seen.steps.values()):
-        value, *when = _greatest(seen, ripple)
-        yield _upper("battery ripple current", "battery", value, limits.battery_ripple_current, "A", when)
     for part in stage.parts:
         name = part.slot.name
         if part.slot.kind == "inductor":
@@ -133,6 +131,23 @@ def _current_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[L
             if limit is not None:
                 value, *when = _greatest(seen, f"{name}.current_rms_a")
                 yield _upper(f"{name.replace('_', ' ')} current", name, value, limit, "A", when)
+
+
+def _curve_checks(stage: Stage, seen: Seen) -> Iterator[LimitCheck]:
+    """Hold each inductor's peak against the end of its curve: beyond it the last inductance holds, unmeasured."""
+    for part in stage.parts:
+        curve = getattr(part.base, "inductance_curve", None)
+        if curve is not None:
+            name = part.slot.name
+            value, *when = _greatest(seen, f"{name}.current_peak_a", f"{name}.current_valley_a")
+            yield _upper("inductance curve, last current", name, value, curve[-1][0], "A", when)
+
+
+def _battery_checks(limits: LimitsTable, seen: Seen) -> Iterator[LimitCheck]:
+    ripple = "battery_ripple.current_rms_a"
+    if limits.battery_ripple_current is not None and all(ripple in steps for steps in seen.steps.values()):
+        value, *when = _greatest(seen, ripple)
+        yield _upper("battery ripple current", "battery", value, limits.battery_ripple_current, "A", when)
 
 
 def _voltage_checks(limits: LimitsTable, stage: Stage, trip_voltage: float | None, seen: Seen) -> Iterator[LimitCheck]:

@@ -26,6 +26,7 @@ from tideleg.errors import InputError
 from tideleg.heat import Modes, modes
 from tideleg.plan import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase, read_table
 from tideleg.registry import Registry, call_plugin, installed
+from tideleg.rolloff import LinkageCurve, effective_inductance
 from tideleg.waveform import FloatArray, Values
 
 WHOLE_STAGE = (Slot("busbar", "busbar", "busbar"), Slot("control", "control", "control"))
@@ -37,6 +38,11 @@ _BASES: dict[str, dict[str, Any]] = {
     "transformer": {"base": TransformerBase},
     "capacitor": {"base": CapacitorBase},
 }
+
+
+MOST_ROUNDS = 100
+SETTLED_INDUCTANCE = 1e-9
+"""Relative change of an inductance that falls with current at which its rounds end [-]."""
 
 
 @dataclass(frozen=True)
@@ -92,7 +98,8 @@ class Stage:
     """A stage that can be asked for its losses.
 
     modes : exact thermal modes, or None where no part has a thermal path
-    inductance : by inductor slot [H]
+    inductance : by inductor slot, at zero current [H]
+    rolloff : by inductor slot, how it falls with current; none for those that do not
     not_modelled : one sentence for each mechanism or temperature that lacks data
     """
 
@@ -101,6 +108,7 @@ class Stage:
     parts: tuple[StagePart, ...]
     modes: Modes | None
     inductance: Mapping[str, Values]
+    rolloff: Mapping[str, LinkageCurve]
     not_modelled: tuple[str, ...]
     registry: Registry
 
@@ -124,9 +132,35 @@ class Stage:
         return next(part for part in self.parts if part.slot.name == name)
 
     def operate(self, point: Point) -> Operation:
-        """Return the steady state that the topology states at each step."""
-        return call_plugin(
-            self.registry, self.topology, lambda: self.topology.operate(point, self.settings, self.inductance)
+        """Return the steady state that the topology states at each step.
+
+        Where an inductance falls with current, the topology is asked again with the inductance that its own currents
+        mean, until they no longer move. More swing means less inductance means more swing, but less than in
+        proportion, since the flux linkage still grows: the rounds contract.
+
+        Raises
+        ------
+        InputError
+            If they do not settle: the curve falls so steeply that no current can be told.
+        """
+        inductance = dict(self.inductance)
+        for _ in range(MOST_ROUNDS):
+            asked = partial(self.topology.operate, point, self.settings, inductance)
+            operation = call_plugin(self.registry, self.topology, asked)
+            if not self.rolloff:
+                return operation
+            still = True
+            for name, curve in self.rolloff.items():
+                current = operation.windings[name].current
+                henry = effective_inductance(curve, current.valley(), current.peak(), inductance[name])
+                still = still and bool(np.all(np.abs(henry - inductance[name]) <= SETTLED_INDUCTANCE * henry))
+                inductance[name] = henry
+            if still:
+                return operation
+        raise InputError(
+            f"stage.inductor.inductance_curve: currents and inductance did not settle in {MOST_ROUNDS} rounds; the"
+            " inductor saturates so far that no current can be told: lower the ripple or the current, or give a curve"
+            " that falls less steeply"
         )
 
     def losses(self, point: Point, temperature: Mapping[str, FloatArray]) -> Losses:
@@ -222,9 +256,11 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
         if cooling is not None and read_as(slot.kind) in cooling.part_settings:
             cooled.append(CooledPart(slot.name, slot.kind, slot.copies * in_parallel, data[f"cooling {cooling.name}"]))
     thermal = _thermal(plan, registry, cooling, cooled)
-    inductance = {p.slot.name: p.base.inductance for p in parts if p.slot.kind == "inductor"}
+    inductors = [p for p in parts if p.slot.kind == "inductor"]
+    inductance = {p.slot.name: p.base.inductance for p in inductors}
+    rolloff = {p.slot.name: LinkageCurve.of(p.base.inductance_curve) for p in inductors if p.base.inductance_curve}
     return Stage(
-        topology, settings, tuple(parts), thermal, inductance, _not_modelled(missing, parts, thermal), registry
+        topology, settings, tuple(parts), thermal, inductance, rolloff, _not_modelled(missing, parts, thermal), registry
     )
 
 
@@ -296,6 +332,11 @@ def _not_modelled(missing: list[tuple[Slot, str]], parts: list[StagePart], therm
     by_mechanism: dict[tuple[str, str], None] = {(slot.table, name): None for slot, name in missing}
     seated = set() if thermal is None else set(thermal.parts)
     sentences = [f"{name} of {table.replace('_', ' ')}: no data given" for table, name in by_mechanism]
+    level = {p.slot.table: None for p in parts if p.slot.kind == "inductor" and not p.base.inductance_curve}
+    sentences += [
+        f"fall of the inductance of {table.replace('_', ' ')} with current: no inductance_curve given, held constant"
+        for table in level
+    ]
     held = {p.slot.table: None for p in parts if p.slot.kind not in ("busbar", "control") and p.slot.name not in seated}
     sentences += [
         f"temperature of {table.replace('_', ' ')}: no thermal path given, held at the coolant" for table in held

@@ -13,7 +13,14 @@ import numpy as np
 from pydantic import ValidationError
 
 from tideleg.contract import Need, Slot, Starter, Topology
-from tideleg.decide.changes import stage_number, with_part, with_stage, with_topology, without_stage_key
+from tideleg.decide.changes import (
+    stage_number,
+    with_inductance,
+    with_part,
+    with_stage,
+    with_topology,
+    without_stage_key,
+)
 from tideleg.demand import profile_of
 from tideleg.errors import InputError
 from tideleg.plan import Plan, format_quantity
@@ -74,7 +81,10 @@ def _with_proposed(plan: Plan, proposed: Mapping[str, float | str], name: str) -
         before = plan.stage.parts.get(table, {}).get(key) if table else None
         instead = "" if before is None else f" instead of {before}"
         notes.append(f"{dotted} = {_text(key, value)}{instead}: proposed by {name}")
-        plan = with_part(plan, table, **{key: value}) if table else with_stage(plan, **{key: value})
+        if dotted == "inductor.inductance":
+            plan = with_inductance(plan, value)
+        else:
+            plan = with_part(plan, table, **{key: value}) if table else with_stage(plan, **{key: value})
     return plan, notes
 
 

@@ -29,6 +29,17 @@ def with_part(plan: Plan, table: str, **keys: object) -> Plan:
     return plan.model_copy(update={"stage": plan.stage.model_copy(update={"parts": parts})})
 
 
+def with_inductance(plan: Plan, henry: float | str) -> Plan:
+    """Return the plan with another inductance; a curve over current keeps its shape and is scaled with it."""
+    curve = plan.stage.parts.get("inductor", {}).get("inductance_curve")
+    if curve is None:
+        return with_part(plan, "inductor", inductance=henry)
+    points = [(parse(ampere, "current"), parse(value, "inductance")) for ampere, value in curve]
+    factor = parse(henry, "inductance") / points[0][1]
+    scaled = [[ampere, factor * value] for ampere, value in points]
+    return with_part(plan, "inductor", inductance=henry, inductance_curve=scaled)
+
+
 def with_cooling(plan: Plan, **keys: object) -> Plan:
     """Return the plan with keys of [cooling] changed or added."""
     if plan.cooling is None:
@@ -64,6 +75,15 @@ def stage_number(plan: Plan, key: str, dimension: str) -> float | None:
     """Return a quantity directly under [stage] in its base unit, or None where it is not given."""
     given = plan.stage.settings.get(key)
     return None if given is None else parse(given, dimension)
+
+
+def inductance_of(plan: Plan) -> float | None:
+    """Return the inductance at zero current [H], from its key or its curve; None where neither is given."""
+    keys = plan.stage.parts.get("inductor", {})
+    curve = keys.get("inductance_curve")
+    if "inductance" in keys or curve is None:
+        return part_number(plan, "inductor", "inductance", "inductance")
+    return parse(curve[0][1], "inductance")
 
 
 def part_number(plan: Plan, table: str, key: str, dimension: str) -> float | None:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from tideleg.decide.changes import part_number, with_part, with_stage
+from tideleg.decide.changes import inductance_of, part_number, with_inductance, with_part, with_stage
 from tideleg.decide.trial import Decision, Trial, Worst, rounded_down, rounded_up, worst_over
 from tideleg.outcome import Outcome
 from tideleg.plan import format_quantity
@@ -50,7 +50,7 @@ def size_inductance(trial: Trial, outcome: Outcome) -> Trial:
     what is not.
     """
     plan, limits = trial.plan, trial.plan.limits
-    present = part_number(plan, "inductor", "inductance", "inductance")
+    present = inductance_of(plan)
     assert present is not None
     rated = worst_over(outcome, "inductor.current_mean_a").value
     needed: list[tuple[float, str, str]] = []
@@ -71,7 +71,7 @@ def size_inductance(trial: Trial, outcome: Outcome) -> Trial:
     text = format_quantity(rounded_up(value), "inductance")
     before = str(plan.stage.parts["inductor"].get("inductance", ""))
     decision = Decision("stage.inductor.inductance", text, before, set_by, at)
-    return trial.decided(with_part(plan, "inductor", inductance=text), decision)
+    return trial.decided(with_inductance(plan, text), decision)
 
 
 def _ripple_over_room(steps: pd.DataFrame, peak_limit: float | None) -> FloatArray:

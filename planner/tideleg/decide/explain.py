@@ -6,8 +6,9 @@ import dataclasses
 from collections.abc import Iterator
 
 from tideleg.decide.changes import (
-    part_number,
+    inductance_of,
     stage_number,
+    with_inductance,
     with_part,
     with_stage,
     with_warmer_coolant,
@@ -87,9 +88,9 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     if frequency is not None:
         yield "switching frequency 25 % higher", with_stage(plan, switching_frequency=1.25 * frequency)
         yield "switching frequency 25 % lower", with_stage(plan, switching_frequency=0.75 * frequency)
-    inductance = part_number(plan, "inductor", "inductance", "inductance")
+    inductance = inductance_of(plan)
     if inductance is not None:
-        yield "inductance 30 % lower (saturation, tolerance)", with_part(plan, "inductor", inductance=0.7 * inductance)
+        yield "inductance 30 % lower (saturation, tolerance)", with_inductance(plan, 0.7 * inductance)
     chips = plan.stage.parts.get("switch", {}).get("in_parallel", 1)
     if "switch" in plan.stage.parts and isinstance(chips, int):
         yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)

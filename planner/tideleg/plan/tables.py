@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from pathlib import Path
 from typing import Annotated, Any, Literal, Self
 
@@ -202,11 +203,43 @@ class SwitchBase(Table):
 
 
 class InductorBase(Table):
-    """Core-known keys of an inductor."""
+    """Core-known keys of an inductor.
+
+    inductance : at zero current; may be left out where a curve gives it
+    inductance_curve : small-signal inductance over current, [[current, inductance], ...] from zero current on
+    """
 
     name: str | None = None
     inductance: Annotated[q.Inductance, Positive]
+    inductance_curve: tuple[tuple[q.Current, Annotated[q.Inductance, Positive]], ...] | None = None
     saturation_current: Annotated[q.Current, Positive] | None = None
+
+    @model_validator(mode="before")
+    @classmethod
+    def _starts_on_its_curve(cls, given: Any) -> Any:
+        curve = given.get("inductance_curve") if isinstance(given, dict) else None
+        if curve and "inductance" not in given and isinstance(curve[0], list | tuple) and len(curve[0]) == 2:
+            return {**given, "inductance": curve[0][1]}
+        return given
+
+    @model_validator(mode="after")
+    def _curve_is_one(self) -> Self:
+        curve = self.inductance_curve
+        if curve is None:
+            return self
+        if len(curve) < 2 or curve[0][0] != 0.0:
+            raise ValueError(
+                "inductance_curve: give at least two points [current, inductance], the first at zero current"
+            )
+        for i, ((before, _), (after, _)) in enumerate(pairwise(curve), start=2):
+            if after <= before:
+                raise ValueError(f"inductance_curve: point {i}: current {after:g} A does not rise above {before:g} A")
+        if abs(curve[0][1] - self.inductance) > 1e-6 * self.inductance:
+            raise ValueError(
+                f"inductance {self.inductance:g} H and inductance_curve {curve[0][1]:g} H at zero current differ; leave"
+                " inductance out, or give one value"
+            )
+        return self
 
 
 class TransformerBase(Table):
