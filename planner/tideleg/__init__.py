@@ -45,6 +45,7 @@ from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
 if TYPE_CHECKING:
     from tideleg.decide.compare import compare
+    from tideleg.decide.derating import derate
     from tideleg.decide.size import size
     from tideleg.mission import passport, read_profile
     from tideleg.outcome import Outcome
@@ -57,6 +58,7 @@ _ON_DEMAND = {
     "Outcome": "tideleg.outcome",
     "Plan": "tideleg.plan",
     "compare": "tideleg.decide.compare",
+    "derate": "tideleg.decide.derating",
     "load_plan": "tideleg.plan",
     "passport": "tideleg.mission",
     "plan_from_mapping": "tideleg.plan",
@@ -119,6 +121,7 @@ __all__ = [
     "Waveform",
     "Winding",
     "compare",
+    "derate",
     "hookimpl",
     "load_plan",
     "passport",

@@ -403,7 +403,11 @@ class CooledPart(NamedTuple):
 
 @runtime_checkable
 class CoolingModel(Protocol):
-    """A way to take heat from the parts to the coolant."""
+    """A way to take heat from the parts to the coolant.
+
+    A model that knows what is left of it when the coolant stops says so by a method `without_coolant(settings)`, which
+    returns settings that describe the same places without that way, or None where nothing is cooled by it.
+    """
 
     @property
     def name(self) -> str:

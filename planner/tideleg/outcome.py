@@ -233,6 +233,25 @@ class Coarser:
 
 
 @dataclass(frozen=True)
+class CoolantLoss:
+    """What follows if the coolant stops at the worst instant and the power is held.
+
+    part, limit_degc : which reaches its limit first, or comes nearest to it
+    seconds : until then [s]; None where no limit is reached within two hours
+    runs_away : whether the part then finds no temperature at all; `seconds` is the last time at which it still did
+    time_s, mission, power_w : when the coolant stops, and the power asked from then on
+    """
+
+    part: str
+    limit_degc: float
+    seconds: float | None
+    runs_away: bool
+    time_s: float
+    mission: str
+    power_w: float
+
+
+@dataclass(frozen=True)
 class PackAnswer:
     """What the plan comes to with one pack: the new one, or the aged one that is run beside it.
 
@@ -297,6 +316,7 @@ class Outcome:
     plan_file: Path | None = None
     coarser: tuple[Coarser, ...] = ()
     packs: tuple[PackAnswer, ...] = ()
+    coolant_loss: CoolantLoss | None = None
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -341,6 +361,7 @@ class Outcome:
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
+            "coolant_loss": _plain(self.coolant_loss),
             "packs": [_plain(pack) for pack in self.packs],
             "resolution": [_plain(one) for one in self.coarser],
             "changes": [_plain(change) for change in self.changes],

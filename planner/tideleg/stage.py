@@ -264,6 +264,27 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
     )
 
 
+def without_coolant(plan: Plan, registry: Registry | None = None) -> Stage | None:
+    """Return the stage after its coolant has stopped; None where the cooling model cannot tell, or none is used.
+
+    A cooling model tells by a method `without_coolant(settings)` that returns its settings after the loss, with which
+    it describes the same places.
+    """
+    registry = registry or installed()
+    if plan.cooling is None:
+        return None
+    cooling = registry.cooling(plan.cooling.model)
+    lost = getattr(cooling, "without_coolant", None)
+    if lost is None:
+        return None
+    settings = read_table(plan, "cooling", plan.cooling.settings, {"cooling": cooling.settings})["cooling"]
+    left = call_plugin(registry, cooling, partial(lost, settings))
+    if left is None:
+        return None
+    table = plan.cooling.model_copy(update={"settings": left.model_dump(exclude_none=True, exclude_defaults=True)})
+    return build_stage(plan.model_copy(update={"cooling": table}), registry)
+
+
 def _part_data(plan: Plan, registry: Registry, slot: Slot) -> dict[str, Any]:
     """Return the validated keys of one part's table: the core's own, each loss model's, each cooling model's."""
     wanted: dict[str, Any] = dict(_BASES.get(slot.kind, {}))

@@ -114,6 +114,12 @@ class Plate:
         default_factory=lambda: {"switch": SwitchSeat, "inductor": InductorSeat, "capacitor": CapacitorSeat}
     )
 
+    def without_coolant(self, settings: PlateSettings) -> PlateSettings | None:
+        """Return the plate with its coolant standing still: only its own heat capacity takes heat."""
+        if settings.plate_resistance is None:
+            return None
+        return settings.model_copy(update={"plate_resistance": LOST_RESISTANCE})
+
     def network(self, settings: PlateSettings, parts: Sequence[CooledPart]) -> Network:
         """Return the network of all parts that have thermal data."""
         seats = [seat for seat in (_seat(part) for part in parts) if seat is not None]
@@ -138,6 +144,10 @@ class Plate:
         local = Mass("coolant_at_plate", 0.0)
         paths = (Path("plate", local.name, settings.plate_resistance), Path(local.name, "coolant", rise))
         return Network(tuple(boundaries), (plate, local), paths, tuple(seats))
+
+
+LOST_RESISTANCE = 1e6
+"""Of a plate whose coolant stands still: far above every other way, and finite, so that the network stays one [K/W]."""
 
 
 def _seat(part: CooledPart) -> Seat | None:

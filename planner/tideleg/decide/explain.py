@@ -13,6 +13,7 @@ from tideleg.decide.changes import (
     with_stage,
     with_warmer_coolant,
 )
+from tideleg.decide.coolant_loss import coolant_loss
 from tideleg.decide.packs import both_packs
 from tideleg.errors import InputError, NoEquilibriumError
 from tideleg.outcome import Change, Coarser, Outcome
@@ -28,7 +29,7 @@ MERGED = (2, 5)
 def explained(
     plan: Plan, outcome: Outcome, *, registry: Registry | None = None, progress: Progress | None = None
 ) -> Outcome:
-    """Return the outcome with its `changes`, `coarser` and `packs` filled: one re-run for each."""
+    """Return the outcome with what further runs tell: changes, resolution, the aged pack, a loss of coolant."""
     changes = []
     for words, variant in _variants(plan):
         try:
@@ -45,6 +46,7 @@ def explained(
         outcome,
         changes=tuple(changes),
         coarser=tuple(c for c in coarser if c is not None),
+        coolant_loss=coolant_loss(plan, outcome, registry),
         packs=both_packs(plan, outcome, registry=registry, progress=progress),
     )
 

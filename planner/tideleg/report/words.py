@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tideleg.limits import LimitCheck
-from tideleg.outcome import Change, Coarser, MissionResult, Outcome, PackAnswer
+from tideleg.outcome import Change, Coarser, CoolantLoss, MissionResult, Outcome, PackAnswer
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
@@ -192,9 +192,22 @@ def sureness(outcome: Outcome) -> list[str]:
         )
     else:
         lines.append("no temperature is modelled")
+    if outcome.coolant_loss is not None:
+        lines.append(_without_coolant(outcome.coolant_loss))
     lines += [_resolution(one) for one in outcome.coarser]
     lines += [f"warning: {warning}" for warning in outcome.warnings]
     return lines
+
+
+def _without_coolant(loss: CoolantLoss) -> str:
+    """Return what follows from a loss of coolant in words: how long a monitor has to act."""
+    origin = f"if the coolant stops at {time_text(loss.time_s, loss.mission)} and {loss.power_w / 1e3:.4g} kW are held"
+    part = plain(loss.part)
+    if loss.seconds is None:
+        return f"{origin}, no limit is reached within two hours; {part} comes nearest"
+    if loss.runs_away:
+        return f"{origin}, {part} finds no steady temperature after {loss.seconds:.3g} s"
+    return f"{origin}, {part} reaches its {loss.limit_degc:g} degC after {loss.seconds:.3g} s"
 
 
 def _resolution(one: Coarser) -> str:
