@@ -36,6 +36,7 @@ from tideleg.contract import (
 )
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
+from tideleg.points import PointReader, PointTable
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
 if TYPE_CHECKING:
@@ -95,6 +96,8 @@ __all__ = [
     "PlanError",
     "PluginError",
     "Point",
+    "PointReader",
+    "PointTable",
     "Position",
     "ProfileError",
     "Seat",

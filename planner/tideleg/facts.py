@@ -38,7 +38,7 @@ def part_entries(plan: Plan, stage: Stage) -> tuple[PartEntry, ...]:
     """Return every sort of part with the data that the plan gives for it."""
     entries = []
     for part in stage.parts:
-        given = plan.stage.parts.get(part.slot.table, {})
+        given = plan.stage.keys_of(part.slot.table)
         facts = {_words(key): _text(value) for key, value in given.items() if key != "part"}
         if given or part.terms:
             in_parallel = int(part.in_parallel) if not hasattr(part.in_parallel, "shape") else 0

@@ -202,7 +202,7 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         point = Point(
             given.voltage, np.broadcast_to(demand.link_voltage, shape), given.current, path_resistance, active
         )
-        losses = stage.losses(point, _by_name(stage, temperature, demand, shape))
+        losses = stage.losses(point, stage.by_name(temperature, demand.held, shape))
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
@@ -227,13 +227,6 @@ def _battery_still(before: BatteryPath, after: BatteryPath) -> bool:
 def _wanted(demand: Demand, loss: FloatArray) -> FloatArray:
     """Return the battery power that the request and the losses ask for [W]."""
     return demand.allowed + loss if demand.terminals == "link" else demand.allowed + np.zeros_like(loss)
-
-
-def _by_name(stage: Stage, temperature: FloatArray, demand: Demand, shape: tuple[int, int]) -> dict[str, FloatArray]:
-    """Return the mean temperature of every part; one without a thermal path is held at the coolant."""
-    held = np.broadcast_to(demand.held, shape)
-    seated = {name: temperature[i] for i, name in enumerate(stage.seated)}
-    return {part.slot.name: seated.get(part.slot.name, held) for part in stage.parts}
 
 
 class _Warmth(NamedTuple):
@@ -272,7 +265,7 @@ def _finish(
     shape = losses.total.shape
     link_voltage = np.broadcast_to(demand.link_voltage, shape)
     point = Point(given.voltage, link_voltage, given.current, losses.path_resistance, active)
-    checked = stage.losses(point, _by_name(stage, warmth.mean, demand, shape))
+    checked = stage.losses(point, stage.by_name(warmth.mean, demand.held, shape))
     served = (given.cause == Cause.NONE) & (demand.allowed == demand.power)
     if demand.terminals == "link":
         power = np.where(served, demand.power, given.power - losses.total)

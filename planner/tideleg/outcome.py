@@ -42,6 +42,21 @@ class LossEntry:
 
 
 @dataclass(frozen=True)
+class OutsideEntry:
+    """A loss term that asked its table of points beyond what they cover, in one pass of one mission.
+
+    part, mechanism : of the term
+    time_share : share of the mission's time [-]
+    energy_share : share of the term's own energy [-]
+    """
+
+    part: str
+    mechanism: str
+    time_share: float
+    energy_share: float
+
+
+@dataclass(frozen=True)
 class EnergyAccount:
     """Where the energy of one pass went [J]; the residuals show how well the books close.
 
@@ -114,6 +129,7 @@ class MissionResult:
     steps : one row a step, columns with units in their names
     energy, losses, battery : accounts of one pass
     passes : passes that the relaxation took in its hardest block
+    outside : terms that asked their tables beyond what those cover
     """
 
     name: str
@@ -124,6 +140,7 @@ class MissionResult:
     losses: tuple[LossEntry, ...]
     battery: BatteryEntry
     passes: int
+    outside: tuple[OutsideEntry, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -284,6 +301,7 @@ class Outcome:
             "efficiency": _number(self.efficiency),
             "worst": _plain(self.worst, leave_out=("traces",)),
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
+            "outside_tables": {m.name: [_plain(entry) for entry in m.outside] for m in self.missions},
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
             "resolution": [_plain(one) for one in self.coarser],

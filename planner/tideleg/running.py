@@ -12,6 +12,7 @@ from tideleg.accounts import battery_entry, energy_account, loss_entries, therma
 from tideleg.battery import Battery
 from tideleg.caution import Safety, SafetyFacts, safety
 from tideleg.columns import steps_frame
+from tideleg.coverage import outside_entries, outside_warnings
 from tideleg.demand import battery_of, demand_of, profile_of
 from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
@@ -129,6 +130,7 @@ def _run_mission(
         losses=loss_entries(stage, demand, blocks),
         battery=battery_entry(battery, demand, steps),
         passes=max(block.passes for block in blocks),
+        outside=outside_entries(stage, demand, blocks),
     )
     return MissionRun(profile, demand, blocks, steps, result)
 
@@ -181,7 +183,10 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         changes=(),
         safety=_safety(plan, stage, battery, steps),
         not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
-        warnings=warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal),
+        warnings=(
+            *warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal),
+            *(line for name, r in runs.items() for line in outside_warnings(name, r.result.outside)),
+        ),
         rules=RULES,
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),
         plan_file=plan.file,

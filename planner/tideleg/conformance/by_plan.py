@@ -19,6 +19,7 @@ from tideleg.registry import Plugin, Registry
 
 TABLES: dict[PartKind, tuple[str, ...]] = {
     "switch": ("switch",),
+    "diode": ("switch.diode",),
     "inductor": ("inductor",),
     "capacitor": ("link_capacitor", "battery_capacitor"),
     "busbar": ("busbar",),
@@ -81,7 +82,7 @@ def _legs(topology: Topology, settings: Mapping[str, object]) -> int:
 def _loss(model: LossModel, plan: Plan) -> Iterator[Check]:
     settings: dict[str, object] = {}
     for table in TABLES[model.reads]:
-        settings = settings or _own(plan.stage.parts.get(table, {}), model.settings)
+        settings = settings or _own(plan.stage.keys_of(table), model.settings)
     yield from loss_checks(model, settings)
 
 
@@ -90,7 +91,7 @@ def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
     parts: dict[PartKind, Mapping[str, object]] = {}
     for kind, keys in model.part_settings.items():
         for table in TABLES[kind]:
-            parts[kind] = parts.get(kind) or _own(plan.stage.parts.get(table, {}), keys)
+            parts[kind] = parts.get(kind) or _own(plan.stage.keys_of(table), keys)
     yield from cooling_checks(model, own, parts)
 
 

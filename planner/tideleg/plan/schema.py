@@ -8,10 +8,11 @@ from typing import Any
 from pydantic import BaseModel
 
 from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
-from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase
+from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
     "switch": [SwitchBase],
+    "diode": [DiodeBase],
     "inductor": [InductorBase],
     "capacitor": [CapacitorBase],
     "busbar": [],
@@ -73,6 +74,9 @@ def _part(kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequ
     keys: dict[str, Any] = {"part": {"type": "string", "description": "file (TOML) whose keys are merged in"}}
     for model in models:
         keys |= _properties(model)
+    if kind == "switch":
+        keys["diode"] = _part("diode", loss_models, cooling_models)
+        keys["diode"]["description"] = "a diode on a die of its own, which carries all reverse current"
     return {"type": "object", "properties": keys, "additionalProperties": False}
 
 

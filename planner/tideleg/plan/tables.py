@@ -102,6 +102,13 @@ class StageTable(Table):
     parts: dict[str, dict[str, Any]] = {}
     origins: dict[str, Path] = {}
 
+    def keys_of(self, table: str) -> dict[str, Any]:
+        """Return the keys of a part table by its dotted name, without the tables inside it; empty where none is."""
+        found: Any = self.parts
+        for name in table.split("."):
+            found = found.get(name, {})
+        return {name: value for name, value in found.items() if not isinstance(value, dict)}
+
 
 class CoolingTable(Table):
     """[cooling]: the model, and its keys as written."""
@@ -177,7 +184,16 @@ class SwitchBase(Table):
 
     name: str | None = None
     in_parallel: int = Field(default=1, ge=1)
+    sharing_spread: Annotated[q.Share, Field(ge=0.0, lt=1.0)] = 0.0
     rated_voltage: Annotated[q.Voltage, Positive] | None = None
+
+
+class DiodeBase(Table):
+    """Core-known keys of a diode on a die of its own; what is left out is as its switch has it."""
+
+    name: str | None = None
+    in_parallel: int | None = Field(default=None, ge=1)
+    sharing_spread: Annotated[q.Share, Field(ge=0.0, lt=1.0)] | None = None
 
 
 class InductorBase(Table):

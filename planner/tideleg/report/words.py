@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from tideleg.coverage import flagged
 from tideleg.limits import LimitCheck
 from tideleg.outcome import Change, Coarser, Outcome
 from tideleg.verdict import quantity_text
@@ -9,6 +10,9 @@ from tideleg.verdict import quantity_text
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
 CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
 BROKEN = "DOES NOT HOLD"
+
+MOST_NAMED = 4
+"""How many tables page one names in a sentence; all stand in the warnings."""
 
 
 def plain(name: str) -> str:
@@ -131,7 +135,20 @@ def _sure_answer(outcome: Outcome) -> str:
     absent, warned = len(outcome.not_modelled), len(outcome.warnings)
     missing = "every mechanism known has data" if absent == 0 else f"{absent} things are not modelled for lack of data"
     warning = "no warnings" if warned == 0 else f"{warned} warning{'s' if warned > 1 else ''}"
-    return sentence(f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)")
+    told = f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)"
+    return sentence(f"{told}{_outside_words(outcome)}")
+
+
+def _outside_words(outcome: Outcome) -> str:
+    """Return which tables of points were asked beyond what they cover by more than a hundredth; "" where none was."""
+    beyond = [(m.name, entry) for m in outcome.missions for entry in flagged(m.outside)]
+    named = ", ".join(
+        f"{e.mechanism} of {plain(e.part)} ({100.0 * e.time_share:.2g} % of the time, {100.0 * e.energy_share:.2g} % of"
+        f" its energy, {mission})"
+        for mission, e in beyond[:MOST_NAMED]
+    )
+    more = f" and {len(beyond) - MOST_NAMED} more" if len(beyond) > MOST_NAMED else ""
+    return f"; EXTRAPOLATED beyond the points given: {named}{more}" if beyond else ""
 
 
 def closure(outcome: Outcome) -> float:
