@@ -57,6 +57,22 @@ class OutsideEntry:
 
 
 @dataclass(frozen=True)
+class GradeEntry:
+    """What one number of a part is worth, and what rests on it.
+
+    key : dotted key in the plan
+    grade : "measured", "datasheet", "typical" or "guess"
+    touches : loss terms that come out otherwise without it, or temperatures
+    loss_share : share of those terms in the loss of a year [-]; None where no loss term reads it
+    """
+
+    key: str
+    grade: str
+    touches: tuple[str, ...]
+    loss_share: float | None
+
+
+@dataclass(frozen=True)
 class EnergyAccount:
     """Where the energy of one pass went [J]; the residuals show how well the books close.
 
@@ -151,6 +167,7 @@ class PartEntry:
     copies : equal places in the stage
     in_parallel : chips that share each place
     facts : label -> value as a person reads it, such as "inductance" -> "110 uH"
+    grades : key -> what its number is worth, where that is said
     """
 
     name: str
@@ -158,6 +175,7 @@ class PartEntry:
     copies: int
     in_parallel: int
     facts: Mapping[str, str]
+    grades: Mapping[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -239,6 +257,8 @@ class Outcome:
     binding : the limit with the greatest share in use, or None where the plan states none
     stage_facts : label -> value, the stage at a glance
     rules : sentences that every output echoes (signs, holding, terminals)
+    grades : what the graded numbers of parts are worth and what rests on them
+    placeholders : one sentence for each part that is invented
     """
 
     title: str
@@ -259,6 +279,8 @@ class Outcome:
     inputs: Inputs
     plan_file: Path | None = None
     coarser: tuple[Coarser, ...] = ()
+    grades: tuple[GradeEntry, ...] = ()
+    placeholders: tuple[str, ...] = ()
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -302,6 +324,8 @@ class Outcome:
             "worst": _plain(self.worst, leave_out=("traces",)),
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
             "outside_tables": {m.name: [_plain(entry) for entry in m.outside] for m in self.missions},
+            "grades": [_plain(entry) for entry in self.grades],
+            "placeholders": list(self.placeholders),
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
             "resolution": [_plain(one) for one in self.coarser],

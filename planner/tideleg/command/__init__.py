@@ -11,10 +11,10 @@ import os
 import sys
 from collections.abc import Sequence
 
-from tideleg.command import compare, plugins, profile, run, schema, size, start
+from tideleg.command import compare, parts, plugins, profile, run, schema, size, start
 from tideleg.errors import InputError, NoEquilibriumError
 
-COMMANDS = (run, size, compare, profile, plugins, schema, start)
+COMMANDS = (run, size, compare, profile, parts, plugins, schema, start)
 
 DONE, BAD_INPUT, NOT_HELD, INTERRUPTED = 0, 2, 3, 130
 

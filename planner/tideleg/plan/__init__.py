@@ -1,6 +1,7 @@
 """The plan: what the user writes, validated; no physics."""
 
 from tideleg.plan.curve import Curve
+from tideleg.plan.parts import GRADES
 from tideleg.plan.reading import load_plan, plan_from_mapping, read_table
 from tideleg.plan.schema import plan_schema
 from tideleg.plan.tables import (
@@ -22,6 +23,7 @@ from tideleg.plan.tables import (
 from tideleg.plan.writing import format_quantity, write_plan
 
 __all__ = [
+    "GRADES",
     "BatteryTable",
     "CapacitorBase",
     "CoolingTable",

@@ -123,9 +123,17 @@ def _battery(data: dict[str, Any], source: Source, files: list[Path]) -> dict[st
 def _stage(data: dict[str, Any], source: Source, files: list[Path]) -> dict[str, Any]:
     """Return [stage] as topology, settings and part tables, with part files merged in under inline keys."""
     settings = {key: value for key, value in data.items() if not isinstance(value, dict) and key != "topology"}
-    tables_ = part_tables(data, source)
-    files += tables_.files
-    shaped: dict[str, Any] = {"settings": settings, "parts": tables_.parts, "origins": tables_.origins}
+    parts, notes = part_tables(data, source)
+    files += notes.files
+    shaped: dict[str, Any] = {
+        "settings": settings,
+        "parts": parts,
+        "origins": notes.origins,
+        "grades": notes.grades,
+        "overridden": notes.overridden,
+        "placeholders": tuple(notes.placeholders),
+        "part_files": notes.part_files,
+    }
     return {"topology": data["topology"], **shaped} if "topology" in data else shaped
 
 

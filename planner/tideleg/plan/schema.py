@@ -8,6 +8,7 @@ from typing import Any
 from pydantic import BaseModel
 
 from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
+from tideleg.plan.parts import GRADES
 from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
@@ -71,7 +72,15 @@ def _slots(topology: Topology) -> Sequence[Any]:
 def _part(kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
     models = [*_BASES[kind], *(m.settings for m in loss_models if m.reads == kind)]
     models += [m.part_settings[kind] for m in cooling_models if kind in m.part_settings]
-    keys: dict[str, Any] = {"part": {"type": "string", "description": "file (TOML) whose keys are merged in"}}
+    keys: dict[str, Any] = {
+        "part": {"type": "string", "description": "file (TOML) whose keys are merged in, or generic:NAME"},
+        "grades": {
+            "type": "object",
+            "description": "what the number of a key is worth; * stands for all keys of this table",
+            "additionalProperties": {"enum": list(GRADES)},
+        },
+        "placeholder": {"type": "boolean", "description": "whether the part is invented; page one says so"},
+    }
     for model in models:
         keys |= _properties(model)
     if kind == "switch":

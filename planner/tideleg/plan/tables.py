@@ -95,12 +95,20 @@ class StageTable(Table):
     """[stage]: the topology, its keys as written, and the part tables as written; plugins validate both.
 
     origins : file of each part key that came from a part file, by dotted key
+    grades : worth of each part key that has one: measured, datasheet, typical or guess, by dotted key
+    overridden : what a part file gives for a key that the plan gives itself, by dotted key
+    placeholders : dotted tables whose part is invented
+    part_files : part file of each dotted table that names one, as written
     """
 
     topology: str
     settings: dict[str, Any] = {}
     parts: dict[str, dict[str, Any]] = {}
     origins: dict[str, Path] = {}
+    grades: dict[str, str] = {}
+    overridden: dict[str, Any] = {}
+    placeholders: tuple[str, ...] = ()
+    part_files: dict[str, str] = {}
 
     def keys_of(self, table: str) -> dict[str, Any]:
         """Return the keys of a part table by its dotted name, without the tables inside it; empty where none is."""

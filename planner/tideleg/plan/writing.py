@@ -15,6 +15,7 @@ import tomlkit
 from tomlkit.items import Table
 
 from tideleg.plan.curves import COLUMNS
+from tideleg.plan.generic import GENERIC
 from tideleg.plan.tables import Plan
 from tideleg.quantity import DIMENSIONS, parse
 
@@ -99,5 +100,7 @@ def _move_part_files(table: Table, moved: Callable[[str], str]) -> None:
     for key, value in table.items():
         if isinstance(value, Table):
             _move_part_files(value, moved)
+        elif isinstance(value, str) and value.startswith(GENERIC):
+            continue
         elif isinstance(value, str) and (key == "part" or value.lower().endswith(".csv")):
             table[key] = moved(str(value))

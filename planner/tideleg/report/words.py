@@ -4,12 +4,18 @@ from __future__ import annotations
 
 from tideleg.coverage import flagged
 from tideleg.limits import LimitCheck
-from tideleg.outcome import Change, Coarser, Outcome
+from tideleg.outcome import Change, Coarser, GradeEntry, Outcome
+from tideleg.plan import GRADES
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
 CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
 BROKEN = "DOES NOT HOLD"
+
+GUESS_MATTERS = 0.01
+"""A guess on which more than this share of the loss rests stands on page one [-]."""
+
+MOST_GUESSES = 6
 
 MOST_NAMED = 4
 """How many tables page one names in a sentence; all stand in the warnings."""
@@ -136,7 +142,13 @@ def _sure_answer(outcome: Outcome) -> str:
     missing = "every mechanism known has data" if absent == 0 else f"{absent} things are not modelled for lack of data"
     warning = "no warnings" if warned == 0 else f"{warned} warning{'s' if warned > 1 else ''}"
     told = f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)"
-    return sentence(f"{told}{_outside_words(outcome)}")
+    return sentence(f"{told}{_placeholder_words(outcome)}{_outside_words(outcome)}")
+
+
+def _placeholder_words(outcome: Outcome) -> str:
+    """Return how many parts are invented; "" where none is."""
+    count = len(outcome.placeholders)
+    return f"; {count} part{'s are PLACEHOLDERS' if count > 1 else ' is a PLACEHOLDER'} with invented numbers" if count else ""
 
 
 def _outside_words(outcome: Outcome) -> str:
@@ -176,8 +188,32 @@ def sureness(outcome: Outcome) -> list[str]:
     else:
         lines.append("no temperature is modelled")
     lines += [_resolution(one) for one in outcome.coarser]
+    lines += [*outcome.placeholders, *_grades(outcome)]
     lines += [f"warning: {warning}" for warning in outcome.warnings]
     return lines
+
+
+def _grades(outcome: Outcome) -> list[str]:
+    """Return how many numbers of parts are worth what, and the guesses that the most of the loss rests on."""
+    if not outcome.grades:
+        return []
+    counts = {grade: sum(e.grade == grade for e in outcome.grades) for grade in GRADES}
+    told = ", ".join(f"{count} {grade}" for grade, count in counts.items() if count)
+    guesses = [e for e in outcome.grades if e.grade == "guess" and e.touches]
+    heavy = [e for e in guesses if e.loss_share is None or e.loss_share > GUESS_MATTERS]
+    lines = [f"numbers of parts by what they are worth: {told}; the others are not graded"]
+    lines += [f"guess: {_guess(entry)}" for entry in heavy[:MOST_GUESSES]]
+    if len(guesses) > len(heavy[:MOST_GUESSES]):
+        lines.append(f"{len(guesses) - len(heavy[:MOST_GUESSES])} more guesses stand in summary.json")
+    return lines
+
+
+def _guess(entry: GradeEntry) -> str:
+    """Return one guess in words: key, share of the loss that rests on it, and what that is."""
+    touches = ", ".join(entry.touches)
+    if entry.loss_share is None:
+        return f"{entry.key} sets the {touches}"
+    return f"{entry.key}: {100.0 * entry.loss_share:.3g} % of the loss rests on it ({touches})"
 
 
 def _resolution(one: Coarser) -> str:
