@@ -63,7 +63,7 @@ class GradeEntry:
     key : dotted key in the plan
     grade : "measured", "datasheet", "typical" or "guess"
     touches : loss terms that come out otherwise without it, or temperatures
-    loss_share : share of those terms in the loss of a year [-]; None where no loss term reads it
+    loss_share : how much of the loss of a year would move if the number were left out [-]; None where no term reads it
     """
 
     key: str

@@ -17,7 +17,7 @@ from tideleg.demand import battery_of, demand_of, profile_of
 from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
 from tideleg.feasible import refuse_impossible_power, refuse_infeasible_rest, refuse_infeasible_steps
-from tideleg.grades import grade_entries, placeholder_words
+from tideleg.grades import Marched, grade_entries, placeholder_words
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
@@ -191,7 +191,9 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         rules=RULES,
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),
         plan_file=plan.file,
-        grades=grade_entries(plan, stage, [r.result for r in runs.values()]),
+        grades=grade_entries(
+            plan, stage, [Marched(r.result.passes_per_year, r.demand, r.blocks) for r in runs.values()]
+        ),
         placeholders=placeholder_words(plan),
     )
 

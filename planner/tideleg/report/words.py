@@ -148,7 +148,11 @@ def _sure_answer(outcome: Outcome) -> str:
 def _placeholder_words(outcome: Outcome) -> str:
     """Return how many parts are invented; "" where none is."""
     count = len(outcome.placeholders)
-    return f"; {count} part{'s are PLACEHOLDERS' if count > 1 else ' is a PLACEHOLDER'} with invented numbers" if count else ""
+    return (
+        f"; {count} part{'s are PLACEHOLDERS' if count > 1 else ' is a PLACEHOLDER'} with invented numbers"
+        if count
+        else ""
+    )
 
 
 def _outside_words(outcome: Outcome) -> str:
@@ -199,21 +203,24 @@ def _grades(outcome: Outcome) -> list[str]:
         return []
     counts = {grade: sum(e.grade == grade for e in outcome.grades) for grade in GRADES}
     told = ", ".join(f"{count} {grade}" for grade, count in counts.items() if count)
-    guesses = [e for e in outcome.grades if e.grade == "guess" and e.touches]
-    heavy = [e for e in guesses if e.loss_share is None or e.loss_share > GUESS_MATTERS]
+    heavy = [e for e in outcome.grades if e.grade == "guess" and (e.loss_share or 0.0) > GUESS_MATTERS]
+    warm = [e for e in outcome.grades if e.grade == "guess" and e.loss_share is None and e.touches]
     lines = [f"numbers of parts by what they are worth: {told}; the others are not graded"]
-    lines += [f"guess: {_guess(entry)}" for entry in heavy[:MOST_GUESSES]]
-    if len(guesses) > len(heavy[:MOST_GUESSES]):
-        lines.append(f"{len(guesses) - len(heavy[:MOST_GUESSES])} more guesses stand in summary.json")
-    return lines
+    lines += [f"guess: {_guess(entry)}" for entry in (*heavy[:MOST_GUESSES], *warm[:MOST_GUESSES])]
+    rest = counts["guess"] - len(heavy[:MOST_GUESSES]) - len(warm[:MOST_GUESSES])
+    return [*lines, f"{rest} more guesses stand in summary.json"] if rest > 0 else lines
 
 
 def _guess(entry: GradeEntry) -> str:
     """Return one guess in words: key, share of the loss that rests on it, and what that is."""
-    touches = ", ".join(entry.touches)
+    by_what: dict[str, list[str]] = {}
+    for touched in entry.touches:
+        what, _, part = touched.partition(" of ")
+        by_what.setdefault(part, []).append(what)
+    told = "; ".join(f"{', '.join(whats)} of {part}" for part, whats in by_what.items())
     if entry.loss_share is None:
-        return f"{entry.key} sets the {touches}"
-    return f"{entry.key}: {100.0 * entry.loss_share:.3g} % of the loss rests on it ({touches})"
+        return f"{entry.key} sets the {told}"
+    return f"{entry.key}: {100.0 * entry.loss_share:.2g} % of the loss rests on it ({told})"
 
 
 def _resolution(one: Coarser) -> str:
