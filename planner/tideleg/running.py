@@ -49,7 +49,7 @@ RULES = (
 
 NEVER_MODELLED = (
     "wear and life of parts: no life model in this release",
-    "fall of the inductance with current, and spread between legs or chips in parallel: not modelled in this release",
+    "fall of the inductance with current, and spread between legs: not modelled in this release",
 )
 """Mechanisms that no data can bring into this release; page one says so every time."""
 

@@ -316,6 +316,8 @@ def _not_modelled(missing: list[tuple[Slot, str]], parts: list[StagePart], therm
     by_mechanism: dict[tuple[str, str], None] = {(slot.table, name): None for slot, name in missing}
     seated = set() if thermal is None else set(thermal.parts)
     sentences = [f"{name} of {_table_words(table)}: no data given" for table, name in by_mechanism]
+    alike = {p.slot.table: None for p in parts if p.chip_share is not None and p.in_parallel > 1 and p.decides}
+    sentences += [f"uneven sharing of chips in parallel of {_table_words(t)}: no sharing_spread given" for t in alike]
     held = {p.slot.table: None for p in parts if p.slot.kind not in ("busbar", "control") and p.slot.name not in seated}
     sentences += [f"temperature of {_table_words(table)}: no thermal path given, held at the coolant" for table in held]
     return tuple(sentences)

@@ -9,11 +9,11 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
-from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, Values, hookimpl, quantity
+from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, hookimpl, quantity
 from tideleg_losses.edges import HeldInTurnOn
-from tideleg_losses.family import Span
 from tideleg_losses.point_keys import ChargePoints, EnergyPoints
 from tideleg_losses.shared_keys import refuse_double_count, refuse_keys_without, refuse_missing
+from tideleg_losses.swing import ChargeCurve, PowerLaw, charge_moved
 
 MECHANISM = "output charge"
 
@@ -82,75 +82,12 @@ class OutputChargeSettings(BaseModel):
 
 
 @dataclass(frozen=True)
-class PowerLaw:
-    """Q (V/V_test)^exponent [C]."""
-
-    charge: Values
-    test_voltage: Values
-    exponent: Values
-
-    def at(self, voltage: Values) -> FloatArray:
-        """Return the charge of one chip [C]."""
-        return charge_at(voltage, self.charge, self.test_voltage, self.exponent)
-
-    def outside(self, voltage: Values) -> NDArray[np.bool_]:
-        """Return where no law holds: nowhere."""
-        return np.zeros(np.shape(voltage), dtype=np.bool_)
-
-
-@dataclass(frozen=True)
-class ChargeCurve:
-    """Q(V) on straight lines between points and from no charge at no voltage; it goes on straight above the last."""
-
-    voltage: tuple[float, ...]
-    charge: tuple[float, ...]
-    scale: Values = 1.0
-
-    def at(self, voltage: Values) -> FloatArray:
-        """Return the charge of one chip [C]."""
-        v, q = np.array([0.0, *self.voltage]), np.array([0.0, *self.charge])
-        if self.voltage[0] == 0.0:
-            v, q = v[1:], q[1:]
-        rise = (q[-1] - q[-2]) / (v[-1] - v[-2])
-        over = np.maximum(np.asarray(voltage) - v[-1], 0.0)
-        return np.asarray(self.scale * (np.interp(np.maximum(voltage, 0.0), v, q) + rise * over))
-
-    def outside(self, voltage: Values) -> NDArray[np.bool_]:
-        """Return where the voltage lies beyond the points; between zero and the first one there is none either."""
-        return Span(self.voltage[0], self.voltage[-1]).beyond(voltage)
-
-
-def charge_at(voltage: Values, charge: Values, test_voltage: Values, exponent: Values) -> FloatArray:
-    """Return Q (V/V_test)^exponent [C]; none at zero voltage or below."""
-    return np.asarray(charge * np.maximum(voltage / test_voltage, 0.0) ** exponent)
-
-
-def stored_energy(charge: Values, voltage: Values, exponent: Values) -> Values:
-    """Return E_oss, the integral of v dQ: Q V p/(1 + p) with Q growing as V^p [J].
-
-    C V²/2 with the capacitance at one voltage is wrong by far, because the capacitance falls with voltage.
-    """
-    return charge * voltage * exponent / (1.0 + exponent)
-
-
-def hard_share(current: FloatArray, dead_time: Values, charge: Values) -> FloatArray:
-    """Return how hard a turn-on is [-]: 1 at or above zero current, 0 where the current swings the node in time.
-
-    The node needs the charge of both positions, 2 Q, within the dead time: zero or negative current alone is not
-    enough. Between the two a straight line in the charge moved, |i| t_d/(2 Q), keeps the loss continuous (modelling
-    choice). Without a dead time nothing can swing, and every turn-on is hard.
-    """
-    both = 2.0 * np.asarray(charge)
-    moved = current * dead_time / np.where(both > 0.0, both, 1.0)
-    return np.clip(1.0 + moved, 0.0, 1.0)
-
-
-@dataclass(frozen=True)
 class OutputChargeTerm:
     """Q(V) V at each hard turn-on, times the frequency: its own energy and what charging the opposite position costs.
 
     The link gives Q V to charge the opposite position, which keeps E_oss of it; the rest, and the E_oss of this one,
-    heat this channel: Q V in all for two alike positions (charge balance).
+    heat this channel: Q V in all for two alike positions (charge balance). Negative current alone makes no soft
+    turn-on: it must move the charge of both within the dead time; where it moves a part, see `swing`.
     """
 
     law: PowerLaw | ChargeCurve
@@ -162,7 +99,7 @@ class OutputChargeTerm:
         """Return the loss of one chip [W]; it does not depend on temperature."""
         voltage = part.turn_on_voltage
         charge = self.law.at(voltage)
-        share = hard_share(part.turn_on_current(), timing.dead_time, charge)
+        share = self.law.hard_share(charge_moved(part.turn_on_current(), timing.dead_time), voltage)
         watts = charge * voltage * share * timing.frequency * part.has_edges() * part.driven
         watts = watts + np.zeros_like(temperature)
         return Line(watts, np.zeros_like(watts))
@@ -177,7 +114,9 @@ class OutputCharge:
     """The model."""
 
     name: str = "output-charge"
-    source: str = "Q_oss V a hard turn-on: charge balance of two positions; ramp to soft: modelling choice, no source"
+    source: str = (
+        "Q_oss V a hard turn-on, less what the current swings in the dead time: charge balance of two positions"
+    )
     reads: PartKind = "switch"
     mechanisms: tuple[str, ...] = (MECHANISM,)
     settings: type[BaseModel] = OutputChargeSettings

@@ -9,12 +9,12 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
-from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, Values, hookimpl, quantity
+from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, hookimpl, quantity
 from tideleg_losses.edges import EnergyLaw, hard_turn_off_current, hard_turn_on_current, refuse_vanishing_slope
 from tideleg_losses.energy_curve import EnergyCurve, edge_outside, energy_curve, gate_resistance_factor
-from tideleg_losses.output_charge import charge_at, hard_share
 from tideleg_losses.point_keys import EnergyByGateResistance, EnergyPoints
 from tideleg_losses.shared_keys import refuse_keys_without, refuse_missing
+from tideleg_losses.swing import PowerLaw, charge_moved
 from tideleg_losses.transition import clamped_inductive_energy
 
 SOURCE = (
@@ -110,14 +110,11 @@ class SwitchingSettings(BaseModel):
 class Standing:
     """What of a turn-on energy is left at zero current fades as the current swings the output charge before it."""
 
-    charge: Values
-    test_voltage: Values
-    exponent: Values
+    law: PowerLaw
 
     def share(self, part: Position, timing: Timing) -> FloatArray:
-        """Return how hard each turn-on is [-]; see `hard_share`."""
-        charge = charge_at(part.turn_on_voltage, self.charge, self.test_voltage, self.exponent)
-        share = hard_share(part.turn_on_current(), timing.dead_time, charge)
+        """Return how hard each turn-on is [-]; see `swing`."""
+        share = self.law.hard_share(charge_moved(part.turn_on_current(), timing.dead_time), part.turn_on_voltage)
         return np.asarray(share * part.has_edges() * part.driven)
 
 
@@ -188,7 +185,7 @@ class Switching:
             return None
         if s.output_charge is None or s.test_voltage is None:
             return None
-        return Standing(s.output_charge, s.test_voltage, s.output_charge_exponent)
+        return Standing(PowerLaw(s.output_charge, s.test_voltage, s.output_charge_exponent))
 
 
 @hookimpl

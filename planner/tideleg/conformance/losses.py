@@ -110,10 +110,35 @@ def _same_both_ways_or_edge(model: LossModel, term: LossTerm[Any]) -> None:
         require_close(there, back, np.abs(there), 0.5, "ohmic loss in the two directions")
 
 
+def _tells_outside(model: LossModel, term: LossTerm[Any]) -> None:
+    outside = getattr(term, "outside", None)
+    if outside is None:
+        return
+    for shape in ((1, 12), (3, 12)):
+        current = np.broadcast_to(np.linspace(-400.0, 400.0, 12), shape)
+        mask = np.asarray(outside(reading(model.reads, current), TIMING, np.full(shape, TEMPERATURE)))
+        assert mask.dtype == np.bool_, f"where it is asked beyond its table is no mask but {mask.dtype}"
+        try:
+            np.broadcast_to(mask, shape)
+        except ValueError:
+            raise AssertionError(f"where it is asked beyond its table has the shape {mask.shape}") from None
+
+
+def _goes_on_beyond(model: LossModel, term: LossTerm[Any]) -> None:
+    if not hasattr(term, "outside"):
+        return
+    for degc in (-60.0, 25.0, 300.0):
+        watts = _watts(model, term, np.linspace(-3000.0, 3000.0, 61)[None, :], 20.0, degc)
+        require_finite(watts, "loss beyond the table")
+        assert np.all(watts >= 0.0), f"{watts.min():.6g} W beyond the table at {degc:g} degC"
+
+
 _PROMISES: dict[str, Callable[[LossModel, LossTerm[Any]], None]] = {
     "never negative, always finite": _never_negative,
     "no jump through zero current": _no_jump,
     "its slope in temperature is true": _slope_is_true,
     "candidates broadcast": _broadcasts,
     "an ohmic loss is alike both ways": _same_both_ways_or_edge,
+    "it tells where it is asked beyond its table": _tells_outside,
+    "beyond its table it stays finite and not negative": _goes_on_beyond,
 }
