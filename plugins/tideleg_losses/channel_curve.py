@@ -23,14 +23,18 @@ def shares_of_columns(one_way: Waveform, knots: FloatArray, order: int) -> Float
     if knots.size == 1:
         return np.asarray(whole)[..., None]
     shares = [np.zeros_like(whole) for _ in knots]
+    greatest = max(float(np.max(np.abs(end), initial=0.0)) for s in one_way.segments for end in (s.start, s.end))
     for k in range(knots.size - 1):
         low, high = knots[k], knots[k + 1]
+        if low > greatest:
+            break
         part = moments(one_way, low, high)
         mass, next_mass = part[order - 1], part[order]
         upper = (next_mass - low * mass) / (high - low)
         shares[k] = shares[k] + mass - upper
         shares[k + 1] = shares[k + 1] + upper
-    shares[-1] = shares[-1] + moments(one_way, knots[-1], np.inf)[order - 1]
+    if greatest >= knots[-1]:
+        shares[-1] = shares[-1] + moments(one_way, knots[-1], np.inf)[order - 1]
     return np.stack(np.broadcast_arrays(*shares), axis=-1)
 
 
@@ -91,6 +95,4 @@ class CurveChannelTerm:
         return there | reaches_beyond(self.reverse, part.current.reverse(), temperature)
 
     def _mean(self, family: Family, one_way: Waveform, degc: FloatArray) -> tuple[FloatArray, FloatArray]:
-        shares = shares_of_columns(one_way, family.current, 2)
-        ohms, rise = family.columns(degc)
-        return np.sum(shares * ohms, axis=-1), np.sum(shares * rise, axis=-1)
+        return family.weighted(shares_of_columns(one_way, family.current, 2), degc)

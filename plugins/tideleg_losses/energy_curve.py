@@ -75,6 +75,8 @@ def energy_curve(
         test_voltage = float(points.voltage[0])
     if test_voltage is None and points.voltage.size == 1:
         raise ValueError("test_voltage is missing: the points hold at a voltage; give it, or a voltage with each point")
+    if "temperature" in table.axes and points.degc.size > 1 and slope:
+        raise ValueError("the points give temperatures, so that a slope of the energy does nothing; drop it")
     if "temperature" in table.axes:
         test_degc, slope = (float(points.degc[0]), slope if points.degc.size == 1 else 0.0)
     return EnergyCurve(points, test_voltage or 1.0, exponent, test_degc, slope, scale)
@@ -83,17 +85,28 @@ def energy_curve(
 def gate_resistance_factor(table: PointTable | None, used: float | None, tested: float | None, key: str) -> float:
     """Return the energy with the gate resistance in use over that with the one of the test [-].
 
-    A straight line between neighbouring points; two points at least, and nothing beyond them.
+    A straight line between neighbouring points; two points at least, and nothing beyond them. Without points the two
+    resistances must be one.
 
     Raises
     ------
     ValueError
         If one of the two resistances is not given or lies beyond the points.
     """
-    if table is None:
+    if used is None and table is None:
         return 1.0
     if used is None or tested is None:
-        raise ValueError(f"{key}: the gate resistance in use and test_gate_resistance are needed with it; give both")
+        raise ValueError(
+            f"{key}: the gate resistance in use and test_gate_resistance, at which the energy holds, go together; give"
+            " both"
+        )
+    if table is None:
+        if used == tested:
+            return 1.0
+        raise ValueError(
+            f"{key} is missing: the energy holds at {tested:g} ohm, and {used:g} ohm is in use; give the energy at two"
+            " gate resistances or more, all else alike"
+        )
     ohms, energies = (np.array(column) for column in zip(*sorted(table.points), strict=True))
     for name, value in (("in use", used), ("of the test", tested)):
         if not ohms[0] <= value <= ohms[-1]:

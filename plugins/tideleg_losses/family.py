@@ -78,11 +78,18 @@ class Family:
 
         return place.join(*(gather(t, row) for row in (low, high) for t in (self.value, self.slope)))
 
-    def columns(self, degc: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Return the value at every current knot (..., S, currents) and its slope, at the first voltage."""
+    def weighted(self, shares: FloatArray, degc: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return the sum over current knots of `shares` (..., S, currents) times the value there, and its slope.
+
+        At the first voltage. The sum over knots comes first, for each temperature knot: it is one product of matrices.
+        """
         place = _Place.of(self.degc, degc)
-        low, high = place.knot, np.minimum(place.knot + 1, self.degc.size - 1)
-        return place.with_columns().join(*(t[0, row] for row in (low, high) for t in (self.value, self.slope)))
+        low, high = place.knot[..., None], np.minimum(place.knot + 1, self.degc.size - 1)[..., None]
+        wanted = np.broadcast_shapes(shares.shape[:-1], place.knot.shape)
+        sums = (shares @ self.value[0].T, shares @ self.slope[0].T)
+        tables = tuple(np.broadcast_to(t, (*wanted, self.degc.size)) for t in sums)
+        rows = (np.broadcast_to(row, (*wanted, 1)) for row in (low, high))
+        return place.join(*(np.take_along_axis(t, row, axis=-1)[..., 0] for row in rows for t in tables))
 
 
 class _Place(NamedTuple):
@@ -101,9 +108,6 @@ class _Place(NamedTuple):
         width = np.diff(knots)[index] if knots.size > 1 else np.ones_like(degc)
         beyond = degc - inside if knots.size > 1 else np.zeros_like(degc)
         return cls(index, (inside - knots[index]) / width, np.asarray(width), beyond)
-
-    def with_columns(self) -> _Place:
-        return _Place(self.knot[..., None], self.share[..., None], self.width[..., None], self.beyond[..., None])
 
     def join(
         self, value: FloatArray, slope: FloatArray, next_value: FloatArray, next_slope: FloatArray

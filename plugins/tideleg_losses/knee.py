@@ -108,8 +108,7 @@ class ForwardCurveTerm:
     def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of one chip [W] and its slope [W/K]."""
         shares = shares_of_columns(one_way(part, self.way), self.curve.current, 1)
-        volts, rise = self.curve.columns(temperature)
-        watts, slope = np.sum(shares * volts, axis=-1), np.sum(shares * rise, axis=-1)
+        watts, slope = self.curve.weighted(shares, temperature)
         return Line(np.asarray(self.scale * watts), np.asarray(self.scale * slope))
 
     def outside(self, part: Position, timing: Timing, temperature: FloatArray) -> NDArray[np.bool_]:

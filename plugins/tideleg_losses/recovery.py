@@ -71,6 +71,8 @@ class RecoveryData(BaseModel):
 
     def law(self) -> EnergyLaw | EnergyCurve | None:
         """Return how the energy scales, or None where no data are given."""
+        if not self.given():
+            return None
         key = "recovery_energy_by_gate_resistance"
         table = self.recovery_energy_by_gate_resistance
         scale = gate_resistance_factor(table, self.turn_on_gate_resistance, self.test_gate_resistance, key)
@@ -78,7 +80,7 @@ class RecoveryData(BaseModel):
         exponent = self.recovery_voltage_exponent
         if self.recovery_energy_curve is not None:
             return energy_curve(self.recovery_energy_curve, self.test_voltage, exponent, degc, slope, scale)
-        if not self.given() or self.test_current is None or self.test_voltage is None:
+        if self.test_current is None or self.test_voltage is None:
             return None
         energy: Values = self.recovery_energy or 0.0
         if self.recovery_charge is not None:

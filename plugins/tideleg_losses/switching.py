@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
-from tideleg import FloatArray, Line, LossTerm, PartKind, Position, Timing, hookimpl, quantity
+from tideleg import FloatArray, Line, LossTerm, PartKind, PointTable, Position, Timing, hookimpl, quantity
 from tideleg_losses.edges import EnergyLaw, hard_turn_off_current, hard_turn_on_current, refuse_vanishing_slope
 from tideleg_losses.energy_curve import EnergyCurve, edge_outside, energy_curve, gate_resistance_factor
 from tideleg_losses.point_keys import EnergyByGateResistance, EnergyPoints
@@ -94,16 +94,26 @@ class SwitchingSettings(BaseModel):
         degc, slope = self.test_temperature, self.switching_energy_slope
         if time is not None:
             return EnergyLaw(clamped_inductive_energy(1.0, 1.0, time), 1.0, 1.0, degc, 1.0, 1.0, slope)
+        if energy is None and curve is None:
+            return None
         key = f"{edge}_energy_by_gate_resistance"
         used = getattr(self, f"{edge}_gate_resistance")
         scale = gate_resistance_factor(getattr(self, key), used, self.test_gate_resistance, key)
         exponent = self.switching_voltage_exponent
         if curve is not None:
-            return energy_curve(curve, self.test_voltage, exponent, degc, slope, scale)
+            return energy_curve(curve, self.test_voltage, exponent, degc, self._slope_for(edge, curve), scale)
         if energy is None or self.test_current is None or self.test_voltage is None:
             return None
         exponents = getattr(self, f"{edge}_current_exponent"), exponent
         return EnergyLaw(scale * energy, self.test_current, self.test_voltage, degc, *exponents, slope)
+
+    def _slope_for(self, edge: str, curve: PointTable) -> float:
+        """Return the slope for one curve: none for points over temperature where the other edge has use for it."""
+        other = "turn_off" if edge == "turn_on" else "turn_on"
+        used = any(getattr(self, f"{other}_{what}") is not None for what in ("energy", "time"))
+        points: PointTable | None = getattr(self, f"{other}_energy_curve")
+        used = used or (points is not None and "temperature" not in points.axes)
+        return 0.0 if used and "temperature" in curve.axes else self.switching_energy_slope
 
 
 @dataclass(frozen=True)

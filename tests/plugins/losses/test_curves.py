@@ -272,6 +272,7 @@ def test_channel_and_body_diode_in_reverse_are_two_parallel_branches(
     assert line.watts[0] == pytest.approx(width * np.mean(whole), rel=1e-5, abs=1e-6)
 
 
+ONE_POINT = {"turn_on_energy": 1e-3, "test_current": 50.0, "test_voltage": 750.0}
 GRID = {"current": 50, "temperature": 25, "energy": 1e-3}
 REFUSED: list[tuple[Any, dict[str, Any], str]] = [
     (SwitchingSettings, {"turn_on_energy_curve": [["50 A", "1 mJ"]]}, "found 1 point; a table needs two"),
@@ -330,6 +331,28 @@ REFUSED: list[tuple[Any, dict[str, Any], str]] = [
         ChannelSettings,
         {"on_resistance": 0.01, "on_resistance_factor": [[0, 0.9], [25, 1]], "on_resistance_slope": 0.004},
         "both say how temperature acts",
+    ),
+    (
+        SwitchingSettings,
+        {"turn_on_energy_curve": CURVES, "switching_energy_slope": 0.002},
+        "the points give temperatures, so that a slope of the energy does nothing",
+    ),
+    (
+        SwitchingSettings,
+        {**ONE_POINT, "turn_on_gate_resistance": "10 ohm", "test_gate_resistance": "2 ohm"},
+        "the energy holds at 2 ohm, and 10 ohm is in use",
+    ),
+    (SwitchingSettings, {**ONE_POINT, "turn_on_gate_resistance": "10 ohm"}, "go together; give both"),
+    (
+        RecoverySettings,
+        {
+            "recovery_energy": 1e-4,
+            "test_current": 50.0,
+            "test_voltage": 750.0,
+            "turn_on_gate_resistance": 10,
+            "test_gate_resistance": 2,
+        },
+        "recovery_energy_by_gate_resistance is missing",
     ),
     (KneeSettings, {"knee_resistance": 0.01}, "knee_voltage is missing"),
     (KneeSettings, {"knee_voltage": 0.9, "knee_voltage_slope": -0.01}, "at 250 degC"),
