@@ -283,3 +283,57 @@ def test_a_file_of_points_is_read_whole_or_refused_with_its_line(
 def test_a_file_that_is_not_there_is_named_with_its_key(plan_of: Any) -> None:
     with pytest.raises(PlanError, match="stage.switch.turn_on_energy_curve: found 'none.csv', which is no file"):
         plan_of({**MOSFET, "turn_on_energy_curve": "none.csv"})
+
+
+def test_a_step_in_which_nothing_flows_asks_no_table(plan_of: Any, tmp_path: Path) -> None:
+    """The factor curve ends below the coolant's temperature: every step with current lies outside, the idle ones not."""
+    keys = {k: v for k, v in MOSFET.items() if k != "on_resistance_slope"}
+    keys |= {"on_resistance_factor": [["0 degC", 0.97], ["25 degC", 1.0], ["35 degC", 1.05]]}
+    plan = plan_of(keys)
+    off = {**plan.stage.settings, "idle": "off"}
+    outcome = run(plan.model_copy(update={"stage": plan.stage.model_copy(update={"settings": off})}))
+    entry = next(e for e in outcome.missions[0].outside if e.mechanism == "channel conduction")
+    rows = outcome.steps
+    flows = rows[f"{entry.part}.current_rms_a"] > 0.0
+    assert entry.time_share == pytest.approx(float((flows * rows["duration_s"]).sum() / rows["duration_s"].sum()))
+    assert entry.energy_share == 1.0
+    assert 0.5 < entry.time_share < 1.0
+
+
+def test_page_one_names_what_is_above_a_hundredth_and_the_warnings_all() -> None:
+    from tideleg.coverage import flagged, outside_warnings
+    from tideleg.outcome import OutsideEntry
+
+    small, by_time, by_energy = (
+        OutsideEntry("a_switch", "turn-on", t, e) for t, e in ((0.01, 0.01), (0.011, 0), (0, 0.011))
+    )
+    assert flagged((small, by_time, by_energy)) == (by_time, by_energy)
+    assert len(outside_warnings("m", (small, by_time, by_energy))) == 3
+
+
+@pytest.mark.parametrize(
+    ("topology", "modulation"),
+    [
+        ("half-bridge", "synchronous"),
+        ("half-bridge", "diode"),
+        ("interleaved", "diode"),
+        ("flying-capacitor", "synchronous"),
+        ("inverting", "synchronous"),
+    ],
+)
+def test_every_topology_takes_two_dies_in_every_position(plan_of: Any, topology: str, modulation: str) -> None:
+    plan = plan_of({**IGBT, "in_parallel": 2})
+    settings = {"switching_frequency": "12 kHz", "modulation": modulation, "dead_time": "1 us"}
+    if topology == "interleaved":
+        settings["legs"] = 2
+    stage = plan.stage.model_copy(update={"topology": topology, "settings": settings})
+    cooling = plan.cooling.model_copy(update={"settings": {"plate_resistance": "5 K/kW"}})
+    outcome = run(plan.model_copy(update={"stage": stage, "cooling": cooling}))
+    parts = [p.name for p in outcome.parts]
+    switches = [p.name for p in outcome.parts if p.kind == "switch"]
+    assert all(f"{name}_diode" in parts for name in switches)
+    frame = outcome.steps
+    for name in switches:
+        both = frame[f"{name}.current_rms_a"] ** 2 + frame[f"{name}_diode.current_rms_a"] ** 2
+        assert np.all(both > 0.0) or modulation == "diode"
+    assert outcome.missions[0].energy.recomputed_residual < 1e-9

@@ -245,3 +245,15 @@ def test_a_plan_made_in_python_takes_part_files_too(write: Any, tmp_path: Path) 
     data = tomllib.loads(write().read_text())
     plan = plan_from_mapping(data, folder=tmp_path)
     assert plan.stage.grades["stage.switch.gate_charge"] == "guess"
+
+
+def test_the_share_of_a_guess_is_weighted_by_the_passes_of_each_mission(write: Any, tmp_path: Path) -> None:
+    path = write()
+    (tmp_path / "q.csv").write_text("time_s,power_w\n0,2000\n2,500\n3,0\n")
+    more = '[[mission]]\nprofile = "q.csv"\npasses_per_year = 50\ncoolant = "40 degC"\n'
+    path.write_text(path.read_text().replace('coolant = "40 degC"', 'passes_per_year = 3\ncoolant = "40 degC"') + more)
+    outcome = run(path)
+    gate = sum(m.passes_per_year * e.total_j for m in outcome.missions for e in m.losses if e.mechanism == "gate")
+    whole = sum(m.passes_per_year * e.total_j for m in outcome.missions for e in m.losses)
+    entry = next(e for e in outcome.grades if e.key == "stage.switch.gate_charge")
+    assert entry.loss_share == pytest.approx(gate / whole, rel=1e-9)

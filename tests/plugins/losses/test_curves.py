@@ -404,3 +404,24 @@ def test_recovery_of_points_comes_at_the_end_with_negative_current() -> None:
     keys = {"recovery_energy_curve": [[0, 0], [60, 3e-4]], "test_voltage": 750.0}
     assert asked(Recovery(), keys, run([9.0], [-30.0]), [25.0])[0].watts[0] == pytest.approx(40e3 * 1.5e-4)
     assert asked(Recovery(), keys, run([-9.0], [30.0]), [25.0])[0].watts[0] == 0.0
+
+
+@given(AMPERES, AMPERES, st.floats(0.2, 1.0), st.booleans())
+def test_the_dead_times_come_off_the_channel_as_the_channel_would_have_counted_them(
+    start: float, end: float, width: float, body: bool
+) -> None:
+    """Reference: the loss without dead time, less what the same run loses when it carries the edge currents alone."""
+    keys: dict[str, Any] = {"on_resistance": 0.01, "reverse_on_resistance": 0.008}
+    keys |= {"diode_voltage": 0.6, "diode_resistance": 0.004} if body else {"on_resistance_current_slope": 2e-3}
+    keys |= {} if body else {"diode_voltage": 9.0}
+    timing = Timing(40e3, 500e-9)  # 2 % of the period at each edge
+    line, _ = asked(Channel(), keys, run([start], [end], width), [25.0], timing)
+    whole, _ = asked(Channel(), keys, run([start], [end], width), [25.0])
+    off = 0.0
+    if width < 1.0:
+        for edge in (start, end):
+            if edge < 0.0:
+                off += asked(Channel(), keys, run([edge], [edge], 1.0), [25.0])[0].watts[0] * 0.02
+    due = whole.watts[0] - off
+    if start * end > 0.0:  # a ramp through zero may spend less time in reverse than the dead time: none is left then
+        assert line.watts[0] == pytest.approx(due, rel=1e-9, abs=1e-9)
