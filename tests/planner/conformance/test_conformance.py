@@ -11,44 +11,15 @@ import pytest
 from tideleg import Line, Waveform
 from tideleg.command import main
 from tideleg.conformance import loss_checks, topology_checks
-from tideleg.conformance.by_plan import plugin_checks
+from tideleg.conformance.by_plan import plugin_checks, shipped_plan
 from tideleg.errors import InputError
-from tideleg.plan import load_plan, plan_from_mapping
+from tideleg.plan import load_plan
 from tideleg.registry import installed
 from tideleg.starter import KINDS, new_plugin
 
 KERBSIDE = load_plan(Path(__file__).parents[3] / "profiles" / "kerbside" / "plan.toml")
 NAMES = sorted({plugin.name for plugin in installed().plugins})
-TWO_DIES = plan_from_mapping(
-    {
-        "title": "an IGBT and its diode",
-        "battery": {"open_circuit_voltage": 400.0},
-        "link": {"voltage": 750.0},
-        "stage": {
-            "topology": "half-bridge",
-            "switching_frequency": 15e3,
-            "inductor": {"inductance": 2e-4},
-            "switch": {
-                "knee_voltage": 0.9,
-                "knee_resistance": 4e-3,
-                "diode": {
-                    "knee_voltage": 1.0,
-                    "knee_resistance": 3e-3,
-                    "recovery_energy": 3e-3,
-                    "recovery_in_turn_on": False,
-                    "test_current": 150.0,
-                    "test_voltage": 600.0,
-                },
-            },
-        },
-        "mission": [{"profile": "kerbside.csv"}],
-    },
-    folder=KERBSIDE.folder,
-)
-OF_TWO_DIES = {"knee", "diode", "diode-recovery"}
-EVERY = [
-    check for name in NAMES for check in plugin_checks(name, TWO_DIES if name in OF_TWO_DIES else KERBSIDE, installed())
-]
+EVERY = [check for name in NAMES for check in plugin_checks(name, shipped_plan(name, installed()), installed())]
 
 
 @pytest.mark.parametrize("check", EVERY, ids=lambda c: f"{c.plugin}:{c}")

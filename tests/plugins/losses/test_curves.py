@@ -425,3 +425,19 @@ def test_the_dead_times_come_off_the_channel_as_the_channel_would_have_counted_t
     due = whole.watts[0] - off
     if start * end > 0.0:  # a ramp through zero may spend less time in reverse than the dead time: none is left then
         assert line.watts[0] == pytest.approx(due, rel=1e-9, abs=1e-9)
+
+
+@given(AMPERES, AMPERES, st.floats(0.05, 1.0), st.floats(-30.0, 170.0))
+def test_a_resistance_that_grows_with_current_and_differs_in_reverse(
+    start: float, end: float, width: float, degc: float
+) -> None:
+    keys = {
+        "on_resistance": 0.01,
+        "on_resistance_slope": 0.004,
+        "on_resistance_current_slope": 2e-3,
+        "reverse_on_resistance": 0.008,
+    }
+    line, _ = asked(Channel(), keys, run([start], [end], width), [degc])
+    i = start + (end - start) * (np.arange(100_000) + 0.5) / 100_000
+    ohms = np.where(i > 0.0, 0.01, 0.008) * (1 + 0.004 * (degc - 25.0)) * (1 + 2e-3 * np.abs(i))
+    assert line.watts[0] == pytest.approx(width * np.mean(ohms * i * i), rel=1e-5, abs=1e-9)
