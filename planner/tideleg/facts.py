@@ -83,7 +83,8 @@ def inputs_of(plan: Plan, profiles: Iterable[Profile]) -> Inputs:
     for profile in profiles:
         sha256[profile.file.name if profile.file else profile.name] = profile.sha256
     for extra in plan.extra_files:
-        sha256[extra.name] = file_sha256(extra)
+        name = extra.name if extra.name not in sha256 else str(extra)
+        sha256[name] = file_sha256(extra)
     versions = {"tideleg": metadata.version("tideleg"), "python": platform.python_version()}
     versions |= {name: metadata.version(name) for name in LIBRARIES}
     return Inputs(sha256, versions)

@@ -70,7 +70,10 @@ def one_way(part: Position, way: Way) -> Waveform:
 
 @dataclass(frozen=True)
 class KneeTerm:
-    """V0(T) |I|_avg + r(T) I_rms² of the current one way; see `SOURCE`."""
+    """V0(T) |I|_avg + r(T) I_rms² of the current one way; see `SOURCE`.
+
+    It counts as ohmic: over the squared current of the leg the loss of both dies is the mean drop in its way.
+    """
 
     voltage: Values
     voltage_slope: Values
@@ -78,7 +81,7 @@ class KneeTerm:
     resistance_slope: Values
     way: Way
     mechanism: str
-    ohmic: bool = False
+    ohmic: bool = True
     heats: bool = True
 
     def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:
@@ -102,7 +105,7 @@ class ForwardCurveTerm:
     way: Way
     mechanism: str
     scale: Values = 1.0
-    ohmic: bool = False
+    ohmic: bool = True
     heats: bool = True
 
     def at(self, part: Position, timing: Timing, temperature: FloatArray) -> Line:

@@ -103,7 +103,8 @@ def _broadcasts(model: LossModel, term: LossTerm[Any]) -> None:
 
 
 def _same_both_ways_or_edge(model: LossModel, term: LossTerm[Any]) -> None:
-    if term.ohmic:
+    both_ways = model.reads != "diode" and getattr(model, "carries", "both") == "both"
+    if term.ohmic and both_ways:
         current = np.array([[100.0, 37.0]])
         there, back = (_watts(model, term, sign * current, 0.0, TEMPERATURE) for sign in (1.0, -1.0))
         # The diode takes the dead times and a part of a large current in reverse alone; still it is one resistance.

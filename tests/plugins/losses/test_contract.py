@@ -279,8 +279,8 @@ def test_what_comes_at_every_edge_grows_with_the_frequency(case: str) -> None:
 def test_what_shifts_the_duty_ratio_and_what_heats_elsewhere() -> None:
     """Only what lies in the way of the leg's current as a resistance is ohmic; only gate heat stays in the driver."""
     offered = [t for model, data in CASES.values() for t in model.terms(model.settings.model_validate(data))]
-    offered = [t for t in offered if getattr(t, "way", None) != "forward"]  # an IGBT's channel is no resistance
-    assert {term.mechanism for term in offered if term.ohmic} == {"channel conduction", "winding dc"}
+    ohmic = {"channel conduction", "diode conduction", "winding dc"}
+    assert {term.mechanism for term in offered if term.ohmic} == ohmic
     assert {term.mechanism for term in offered if not term.heats} == {"gate"}
 
 
