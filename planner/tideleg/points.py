@@ -152,6 +152,8 @@ class PointReader:
     def _column(self, cell: str, given: PointsFile) -> tuple[str, Any]:
         match = _HEADER.match(cell)
         head, unit = (match.group(1), match.group(2)) if match else (cell, None)
+        if unit is None and head in self.dimensions and self.dimensions[head] == "share":
+            return head, float
         for name in sorted(self.dimensions, key=len, reverse=True):
             if head == name and unit is not None:
                 return name, column_unit(unit, self.dimensions[name], f"{given.name} column {cell!r}")
@@ -165,6 +167,6 @@ class PointReader:
         if value < 0.0 or (self.above_zero and value == 0.0):
             allowed = "above zero" if self.above_zero else "zero or above"
             raise ValueError(f"{word}: found the {self.value} {value:g}; it must be {allowed}")
-        for axis, least in (("current", 0.0), ("voltage", 0.0), ("resistance", 0.0)):
+        for axis, least in (("current", 0.0), ("voltage", 0.0), ("resistance", 0.0), ("gate_resistance", 0.0)):
             if axis != self.value and row.get(axis, 0.0) < least:
                 raise ValueError(f"{word}: {axis} {row[axis]:g} is negative; points hold magnitudes")

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from tideleg import FloatArray, Line, PointTable, Values
 from tideleg_losses.family import Family, family
+from tideleg_losses.gate_axis import AXIS, at_gate_resistance
 
 
 @dataclass(frozen=True)
@@ -61,15 +62,22 @@ def edge_outside(law: object, current: FloatArray, voltage: Values, degc: FloatA
 
 
 def energy_curve(
-    table: PointTable, test_voltage: Values | None, exponent: Values, test_degc: Values, slope: Values, scale: Values
+    table: PointTable,
+    test_voltage: Values | None,
+    exponent: Values,
+    test_degc: Values,
+    slope: Values,
+    scale: Values = 1.0,
+    gate_resistance: float | None = None,
 ) -> EnergyCurve:
-    """Return the law of a table.
+    """Return the law of a table; see `EnergyCurve` for the numbers, `at_gate_resistance` for the last one.
 
     Raises
     ------
     ValueError
         If the table's grid has holes, or nothing says at which voltage it holds.
     """
+    table = at_gate_resistance(table, gate_resistance)
     points = family(table, "origin")
     if "voltage" in table.axes and points.voltage.size == 1:
         test_voltage = float(points.voltage[0])
@@ -82,17 +90,23 @@ def energy_curve(
     return EnergyCurve(points, test_voltage or 1.0, exponent, test_degc, slope, scale)
 
 
-def gate_resistance_factor(table: PointTable | None, used: float | None, tested: float | None, key: str) -> float:
+def gate_resistance_factor(
+    table: PointTable | None, used: float | None, tested: float | None, key: str, curve: PointTable | None
+) -> float:
     """Return the energy with the gate resistance in use over that with the one of the test [-].
 
     A straight line between neighbouring points; two points at least, and nothing beyond them. Without points the two
-    resistances must be one.
+    resistances must be one. A curve with gate resistances of its own needs no factor.
 
     Raises
     ------
     ValueError
         If one of the two resistances is not given or lies beyond the points.
     """
+    if curve is not None and AXIS in curve.axes:
+        if table is not None:
+            raise ValueError(f"{key}: the points of the curve give gate resistances as well; drop one of the two")
+        return 1.0
     if used is None and table is None:
         return 1.0
     if used is None or tested is None:

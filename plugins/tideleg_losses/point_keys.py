@@ -8,7 +8,12 @@ from pydantic import PlainValidator, WithJsonSchema
 
 from tideleg import PointReader, PointTable
 
-_AXES = {"current": "current", "voltage": "voltage", "temperature": "temperature"}
+_AXES = {
+    "current": "current",
+    "voltage": "voltage",
+    "temperature": "temperature",
+    "gate_resistance": "resistance",
+}
 _ENERGY = PointReader("energy", "energy", _AXES, required=("current",))
 _BY_GATE = PointReader("energy", "energy", {"resistance": "resistance"}, required=("resistance",), above_zero=True)
 _RESISTANCE = PointReader(
@@ -21,7 +26,7 @@ _FORWARD = PointReader(
 _CHARGE = PointReader("charge", "charge", {"voltage": "voltage"}, required=("voltage",))
 
 EnergyPoints = Annotated[PointTable, PlainValidator(_ENERGY), WithJsonSchema(_ENERGY.schema())]
-"""Energy over current, and over voltage and temperature where given."""
+"""Energy over current, and over voltage, temperature and gate resistance where given."""
 
 EnergyByGateResistance = Annotated[PointTable, PlainValidator(_BY_GATE), WithJsonSchema(_BY_GATE.schema())]
 """Energy over gate resistance, all else alike."""

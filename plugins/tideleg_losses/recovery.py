@@ -74,12 +74,16 @@ class RecoveryData(BaseModel):
         if not self.given():
             return None
         key = "recovery_energy_by_gate_resistance"
-        table = self.recovery_energy_by_gate_resistance
-        scale = gate_resistance_factor(table, self.turn_on_gate_resistance, self.test_gate_resistance, key)
+        table, curve, used = (
+            self.recovery_energy_by_gate_resistance,
+            self.recovery_energy_curve,
+            self.turn_on_gate_resistance,
+        )
+        scale = gate_resistance_factor(table, used, self.test_gate_resistance, key, curve)
         degc, slope = self.test_temperature, self.recovery_energy_slope
         exponent = self.recovery_voltage_exponent
-        if self.recovery_energy_curve is not None:
-            return energy_curve(self.recovery_energy_curve, self.test_voltage, exponent, degc, slope, scale)
+        if curve is not None:
+            return energy_curve(curve, self.test_voltage, exponent, degc, slope, scale, used)
         if self.test_current is None or self.test_voltage is None:
             return None
         energy: Values = self.recovery_energy or 0.0

@@ -98,10 +98,11 @@ class SwitchingSettings(BaseModel):
             return None
         key = f"{edge}_energy_by_gate_resistance"
         used = getattr(self, f"{edge}_gate_resistance")
-        scale = gate_resistance_factor(getattr(self, key), used, self.test_gate_resistance, key)
+        scale = gate_resistance_factor(getattr(self, key), used, self.test_gate_resistance, key, curve)
         exponent = self.switching_voltage_exponent
         if curve is not None:
-            return energy_curve(curve, self.test_voltage, exponent, degc, self._slope_for(edge, curve), scale)
+            slope = self._slope_for(edge, curve)
+            return energy_curve(curve, self.test_voltage, exponent, degc, slope, scale, used)
         if energy is None or self.test_current is None or self.test_voltage is None:
             return None
         exponents = getattr(self, f"{edge}_current_exponent"), exponent

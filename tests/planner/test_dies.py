@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from tideleg import InputError, PlanError, Segment, Waveform, plan_from_mapping, run
+from tideleg import InputError, NoEquilibriumError, PlanError, Segment, Waveform, plan_from_mapping, run
 
 DIODE = {
     "knee_voltage": "1.0 V",
@@ -357,3 +357,12 @@ def test_every_topology_takes_two_dies_in_every_position(plan_of: Any, topology:
         both = frame[f"{name}.current_rms_a"] ** 2 + frame[f"{name}_diode.current_rms_a"] ** 2
         assert np.all(both > 0.0) or modulation == "diode"
     assert outcome.missions[0].energy.recomputed_residual < 1e-9
+
+
+def test_a_resistance_that_runs_away_beyond_its_points_finds_no_equilibrium(plan_of: Any, tmp_path: Path) -> None:
+    """Held at its last point it would settle below 300 degC, falsely; it goes on as steeply as it ended."""
+    (tmp_path / "p.csv").write_text("time_s,power_w\n0,52000\n2000,52000\n4000,0\n")
+    keys = {k: v for k, v in MOSFET.items() if k != "on_resistance_slope"} | {"in_parallel": 1}
+    keys |= {"on_resistance_factor": [["0 degC", 0.9], ["25 degC", 1.0], ["100 degC", 1.6], ["150 degC", 2.4]]}
+    with pytest.raises(NoEquilibriumError, match="no thermal equilibrium"):
+        run(plan_of(keys, cooling={"plate_resistance": "0.7 K/W"}))

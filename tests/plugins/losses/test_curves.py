@@ -441,3 +441,37 @@ def test_a_resistance_that_grows_with_current_and_differs_in_reverse(
     i = start + (end - start) * (np.arange(100_000) + 0.5) / 100_000
     ohms = np.where(i > 0.0, 0.01, 0.008) * (1 + 0.004 * (degc - 25.0)) * (1 + 2e-3 * np.abs(i))
     assert line.watts[0] == pytest.approx(width * np.mean(ohms * i * i), rel=1e-5, abs=1e-9)
+
+
+BY_GATE = [
+    {"current": i, "gate_resistance": r, "temperature": t, "energy": (1 + 0.1 * r) * 1e-5 * i * (1 + 1e-3 * t)}
+    for r, amps in ((2.0, (0.0, 50.0, 100.0)), (10.0, (0.0, 30.0, 90.0)), (20.0, (0.0, 80.0)))
+    for t in (25.0, 150.0)
+    for i in amps
+]
+
+
+@pytest.mark.parametrize("ohms", [2.0, 5.0, 10.0, 16.0, 20.0])
+def test_an_energy_over_gate_resistance_is_read_at_the_one_in_use(ohms: float) -> None:
+    keys = {"turn_on_energy_curve": BY_GATE, "test_voltage": 750.0, "turn_on_gate_resistance": ohms}
+    line, outside = asked(Switching(), keys, run([60.0, 95.0], 0.0), [25.0, 150.0])
+    due = 40e3 * (1 + 0.1 * ohms) * 1e-5 * np.array([60 * 1.025, 95 * 1.15])
+    np.testing.assert_allclose(line.watts, due, rtol=1e-9)
+    assert list(outside) == [False, ohms != 2.0]  # only the curves at 2 ohm go beyond 90 A
+
+
+@pytest.mark.parametrize(
+    ("keys", "words"),
+    [
+        ({}, "the one in use is missing"),
+        ({"turn_on_gate_resistance": 1.9}, "1.9 ohm, lies beyond the points from 2 to 20 ohm"),
+        (
+            {"turn_on_gate_resistance": 5, "turn_on_energy_by_gate_resistance": [[2, 1e-3], [9, 2e-3]]},
+            "drop one of the two",
+        ),
+    ],
+)
+def test_a_gate_resistance_beyond_its_points_is_refused(keys: dict[str, Any], words: str) -> None:
+    with pytest.raises(ValidationError) as caught:
+        SwitchingSettings.model_validate({"turn_on_energy_curve": BY_GATE, "test_voltage": 750.0, **keys})
+    assert words in str(caught.value)
