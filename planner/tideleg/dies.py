@@ -33,12 +33,27 @@ class Die(NamedTuple):
     decides: bool = True
 
 
-def with_diodes(slots: tuple[Slot, ...], parts: Mapping[str, Mapping[str, Any]]) -> Iterator[tuple[Slot, str]]:
-    """Yield every slot with the name of the place whose current it carries; diodes follow their switch."""
+class Placed(NamedTuple):
+    """A sort of part and where it stands.
+
+    slot : of the topology, or made for a diode beside a switch
+    place : name of the topology's slot whose current it carries
+    has_diode : whether it is a switch with a diode of its own beside it
+    """
+
+    slot: Slot
+    place: str
+    has_diode: bool
+
+
+def with_diodes(slots: tuple[Slot, ...], parts: Mapping[str, Mapping[str, Any]]) -> Iterator[Placed]:
+    """Yield every slot of a topology; the diode that its table gives follows a switch."""
     for slot in slots:
-        yield slot, slot.name
-        if slot.kind == "switch" and isinstance(parts.get(slot.table, {}).get(DIODE), Mapping):
-            yield Slot(f"{slot.name}_{DIODE}", "diode", f"{slot.table}.{DIODE}", slot.copies), slot.name
+        has_diode = slot.kind == "switch" and isinstance(parts.get(slot.table, {}).get(DIODE), Mapping)
+        yield Placed(slot, slot.name, has_diode)
+        if has_diode:
+            diode = Slot(f"{slot.name}_{DIODE}", "diode", f"{slot.table}.{DIODE}", slot.copies)
+            yield Placed(diode, slot.name, False)
 
 
 def dies_of(slot: Slot, chips: int, spread: float) -> tuple[Die, ...]:

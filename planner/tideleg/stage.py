@@ -213,10 +213,8 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
     cooling = registry.cooling(plan.cooling.model) if plan.cooling is not None else None
     parts: list[StagePart] = []
     cooled, missing = [], []
-    every = list(with_diodes(slots, plan.stage.parts))
-    for slot, place in every:
+    for slot, place, has_diode in with_diodes(slots, plan.stage.parts):
         data = _part_data(plan, registry, slot)
-        has_diode = slot.kind == "switch" and any(o.kind == "diode" and of == place for o, of in every)
         terms, lacking = _bound_terms(plan, registry, slot, data, has_diode)
         base = data.get("base")
         host = next((p.base for p in parts if p.slot.name == place), base)
