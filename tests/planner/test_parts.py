@@ -257,3 +257,19 @@ def test_the_share_of_a_guess_is_weighted_by_the_passes_of_each_mission(write: A
     whole = sum(m.passes_per_year * e.total_j for m in outcome.missions for e in m.losses)
     entry = next(e for e in outcome.grades if e.key == "stage.switch.gate_charge")
     assert entry.loss_share == pytest.approx(gate / whole, rel=1e-9)
+
+
+@pytest.mark.parametrize("file", sorted(FOLDER.glob("*.toml")), ids=lambda f: f.stem)
+def test_the_schema_of_a_part_file_accepts_every_generic_part_and_refuses_a_slip(file: Path, capsys: Any) -> None:
+    import tomllib
+
+    import jsonschema
+
+    assert main(["schema", "--part", "switch"]) == 0
+    schema = json.loads(capsys.readouterr().out)
+    jsonschema.Draft202012Validator.check_schema(schema)
+    validator = jsonschema.Draft202012Validator(schema)
+    data = tomllib.loads(file.read_text(encoding="utf-8"))
+    assert [error.message for error in validator.iter_errors(data)] == []
+    assert not validator.is_valid({**data, "part": "other.toml"})
+    assert not validator.is_valid({**data, "on_resistence": 1})

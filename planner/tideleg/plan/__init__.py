@@ -3,7 +3,7 @@
 from tideleg.plan.curve import Curve
 from tideleg.plan.parts import GRADES
 from tideleg.plan.reading import load_plan, plan_from_mapping, read_table
-from tideleg.plan.schema import plan_schema
+from tideleg.plan.schema import part_schema, plan_schema
 from tideleg.plan.tables import (
     BatteryTable,
     CapacitorBase,
@@ -41,6 +41,7 @@ __all__ = [
     "VehicleTable",
     "format_quantity",
     "load_plan",
+    "part_schema",
     "plan_from_mapping",
     "plan_schema",
     "read_table",

@@ -40,6 +40,15 @@ def plan_schema(
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
 
 
+def part_schema(
+    kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+) -> dict[str, Any]:
+    """Return the JSON Schema (draft 2020-12) of a part file: the keys of one kind of part, without a further file."""
+    schema = _part(kind, loss_models, cooling_models)
+    schema["properties"].pop("part")
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", "title": f"part file: {kind}", **schema}
+
+
 def _stage(
     topologies: Sequence[Topology], loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
 ) -> dict[str, Any]:
