@@ -41,6 +41,7 @@ from tideleg.contract import (
 )
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
+from tideleg.points import PointReader, PointTable
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
 if TYPE_CHECKING:
@@ -107,6 +108,8 @@ __all__ = [
     "PlanError",
     "PluginError",
     "Point",
+    "PointReader",
+    "PointTable",
     "Position",
     "ProfileError",
     "Rest",

@@ -9,7 +9,7 @@ import numpy as np
 from tideleg.battery import Battery
 from tideleg.choices import loss_with, plain_choice
 from tideleg.columns import choice_name
-from tideleg.march import Demand, Settled, temperatures_by_name
+from tideleg.march import Demand, Settled
 from tideleg.outcome import BatteryEntry, ChoiceAccount, EnergyAccount, LossEntry, ThermalEntry
 from tideleg.stage import Stage
 
@@ -79,7 +79,7 @@ def choice_account(stage: Stage, demand: Demand, blocks: list[Settled]) -> Choic
         begin, saved = 0, 0.0
         for block in blocks:
             part = demand.block(begin)
-            loss = loss_with(stage, block.point, temperatures_by_name(stage, block.mean, part))
+            loss = loss_with(stage, block.point, stage.by_name(block.mean, part.held, block.losses.total.shape))
             saved += float(np.sum((loss(plain) - block.losses.total)[0] * part.duration))
             begin += len(part.power)
     return ChoiceAccount(

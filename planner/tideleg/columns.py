@@ -127,15 +127,28 @@ def _battery_ripple(part: StagePart, henry: float, block: Settled, one: Callable
 
 def _switch(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
     name = part.slot.name
-    position = block.checked.operation.positions[name]
-    share = 1.0 / part.in_parallel
-    current = position.current
+    position = block.checked.operation.positions[part.place]
+    share = part.share
+    current = position.current.forward() if part.forward_only else position.current
     return {
         f"{name}.current_rms_a": one(current.rms() * share),
         f"{name}.current_mean_a": one(current.mean() * share),
         f"{name}.current_peak_a": one(np.maximum(np.abs(current.peak()), np.abs(current.valley())) * share),
         f"{name}.turn_on_current_a": one(position.turn_on_current() * share),
         f"{name}.turn_off_current_a": one(position.turn_off_current() * share),
+        f"{name}.blocked_voltage_v": one(position.blocks),
+    }
+
+
+def _diode(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
+    """Return what a diode of its own carries: the reverse current of its place, as a magnitude."""
+    name = part.slot.name
+    position = block.checked.operation.positions[part.place]
+    current = position.current.reverse()
+    return {
+        f"{name}.current_rms_a": one(current.rms() * part.share),
+        f"{name}.current_mean_a": one(-current.mean() * part.share),
+        f"{name}.current_peak_a": one(np.maximum(-current.valley(), 0.0) * part.share),
         f"{name}.blocked_voltage_v": one(position.blocks),
     }
 
@@ -184,6 +197,7 @@ def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]
 
 _READERS: dict[str, Callable[[StagePart, Settled, Callable[[Any], FloatArray]], Columns]] = {
     "switch": _switch,
+    "diode": _diode,
     "inductor": _inductor,
     "transformer": _inductor,
     "capacitor": _capacitor,

@@ -27,7 +27,7 @@ PROJECT = "tideleg"
 hookspec = pluggy.HookspecMarker(PROJECT)
 hookimpl = pluggy.HookimplMarker(PROJECT)
 
-PartKind = Literal["switch", "inductor", "transformer", "capacitor", "busbar", "control"]
+PartKind = Literal["switch", "diode", "inductor", "transformer", "capacitor", "busbar", "control"]
 
 READ_AS: Mapping[PartKind, PartKind] = {"transformer": "inductor"}
 """A kind whose losses and cooling are those of another: a transformer's winding is read as an inductor's is."""
@@ -326,7 +326,11 @@ Reading_contra = TypeVar("Reading_contra", contravariant=True)
 
 
 class LossTerm(Protocol[Reading_contra]):
-    """One mechanism of one part, with its data bound."""
+    """One mechanism of one part, with its data bound.
+
+    A term may also have `outside(part, timing, temperature)`, with the arguments of `at`: where it asks its table of
+    points beyond what they cover. The core counts the time and the energy of it once all has settled.
+    """
 
     @property
     def mechanism(self) -> str:
@@ -346,15 +350,20 @@ class LossTerm(Protocol[Reading_contra]):
     def at(self, part: Reading_contra, timing: Timing, temperature: FloatArray) -> Line:
         """Return the loss of one part at a temperature estimate [degC].
 
-        For a switch `part` is a Position whose current is that of ONE chip; for an inductor a Winding; for a
-        capacitor an Exchange; for busbar and control a Flow.
+        For a switch, and for a diode of its own beside one, `part` is the Position with the current of ONE chip, both
+        ways: the diode's terms count what is below zero. For an inductor it is a Winding; for a capacitor an
+        Exchange; for busbar and control a Flow.
         """
         ...
 
 
 @runtime_checkable
 class LossModel(Protocol):
-    """A loss mechanism, or several that share data."""
+    """A loss mechanism, or several that share data.
+
+    A model that reads switches may have `carries`: "forward", "reverse" or "both" says which current its terms count
+    conducting. A switch with a diode of its own leaves the reverse current to that diode; see `dies`.
+    """
 
     @property
     def name(self) -> str:

@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
     from tideleg.plan import LimitsTable
-    from tideleg.stage import Stage
+    from tideleg.stage import Stage, StagePart
 
 
 @dataclass(frozen=True)
@@ -88,14 +88,20 @@ def unchecked_limits(limits: LimitsTable, checks: tuple[LimitCheck, ...]) -> tup
     )
 
 
+def _deciding(stage: Stage) -> list[StagePart]:
+    """Return the parts that a limit looks at: of chips in parallel the one that carries the most."""
+    return [part for part in stage.parts if part.decides]
+
+
 def _temperature_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[LimitCheck]:
     by_kind = {
         "switch": ("junction temperature", limits.junction_temperature),
+        "diode": ("junction temperature", limits.junction_temperature),
         "inductor": ("inductor temperature", limits.inductor_temperature),
         "transformer": ("inductor temperature", limits.inductor_temperature),
         "capacitor": ("capacitor temperature", limits.capacitor_temperature),
     }
-    for part in stage.parts:
+    for part in _deciding(stage):
         name, limit = by_kind.get(part.slot.kind, ("", None))
         if limit is not None and part.slot.name in stage.seated:
             value, time, mission = _greatest(seen, f"{part.slot.name}.temperature_degc")
@@ -109,7 +115,7 @@ def _temperature_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterat
 
 
 def _current_checks(limits: LimitsTable, stage: Stage, seen: Seen) -> Iterator[LimitCheck]:
-    for part in stage.parts:
+    for part in _deciding(stage):
         name = part.slot.name
         if part.slot.kind == "inductor":
             if limits.inductor_peak_current is not None:
@@ -151,7 +157,7 @@ def _battery_checks(limits: LimitsTable, seen: Seen) -> Iterator[LimitCheck]:
 
 
 def _voltage_checks(limits: LimitsTable, stage: Stage, trip_voltage: float | None, seen: Seen) -> Iterator[LimitCheck]:
-    for part in stage.parts:
+    for part in _deciding(stage):
         name = part.slot.name
         rated = getattr(part.base, "rated_voltage", None)
         if part.slot.kind == "switch" and rated is not None and limits.voltage_utilisation is not None:

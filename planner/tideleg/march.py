@@ -209,7 +209,7 @@ def relax(stage: Stage, battery: Battery, demand: Demand, carry: Carry, elapsed:
         given = answer(battery, _wanted(demand, loss), demand.duration, carry.battery, path, demand.battery_degc)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, path_resistance, active, choice.code)
-        losses = stage.losses(point, temperatures_by_name(stage, temperature, demand))
+        losses = stage.losses(point, stage.by_name(temperature, demand.held, shape))
         moved, response = _warm(propagator, carry, losses, temperature, demand)
         drift = np.sum(np.abs(losses.total - loss) * demand.duration, axis=-1)
         throughput = np.sum(np.abs(given.power) * demand.duration, axis=-1)
@@ -243,7 +243,7 @@ def _chosen(
         given = answer(battery, request, demand.duration, carry.battery, path, degc)
         link = np.broadcast_to(demand.link_voltage, shape)
         point = Point(given.voltage, link, given.current, np.zeros(shape), active)
-        loss = loss_with(stage, point, temperatures_by_name(stage, temperature, demand))
+        loss = loss_with(stage, point, stage.by_name(temperature, demand.held, shape))
         rest = Rest(demand.duration, given.source_voltage, link, given.current, active, loss)
         return chosen(stage, rest, carry.choice)
     return NO_CHOICE
@@ -259,13 +259,6 @@ def _battery_still(before: BatteryPath, after: BatteryPath) -> bool:
 def _wanted(demand: Demand, loss: FloatArray) -> FloatArray:
     """Return the battery power that the request and the losses ask for [W]."""
     return demand.allowed + loss if demand.terminals == "link" else demand.allowed + np.zeros_like(loss)
-
-
-def temperatures_by_name(stage: Stage, temperature: FloatArray, demand: Demand) -> dict[str, FloatArray]:
-    """Return the mean temperature (C, S) of every part; one without a thermal path is held at the coolant."""
-    held = np.broadcast_to(demand.held, (temperature.shape[1], len(demand.power)))
-    seated = {name: temperature[i] for i, name in enumerate(stage.seated)}
-    return {part.slot.name: seated.get(part.slot.name, held) for part in stage.parts}
 
 
 class _Warmth(NamedTuple):
@@ -305,7 +298,7 @@ def _finish(
     point = asked._replace(
         battery_voltage=given.voltage, battery_current=given.current, path_resistance=losses.path_resistance
     )
-    checked = stage.losses(point, temperatures_by_name(stage, warmth.mean, demand))
+    checked = stage.losses(point, stage.by_name(warmth.mean, demand.held, shape))
     served = (given.cause == Cause.NONE) & (demand.allowed == demand.power)
     if demand.terminals == "link":
         power = np.where(served, demand.power, given.power - losses.total)

@@ -43,6 +43,37 @@ class LossEntry:
 
 
 @dataclass(frozen=True)
+class OutsideEntry:
+    """A loss term that asked its table of points beyond what they cover, in one pass of one mission.
+
+    part, mechanism : of the term
+    time_share : share of the mission's time [-]
+    energy_share : share of the term's own energy [-]
+    """
+
+    part: str
+    mechanism: str
+    time_share: float
+    energy_share: float
+
+
+@dataclass(frozen=True)
+class GradeEntry:
+    """What one number of a part is worth, and what rests on it.
+
+    key : dotted key in the plan
+    grade : "measured", "datasheet", "typical" or "guess"
+    touches : loss terms that come out otherwise without it, or temperatures
+    loss_share : how much of the loss of a year would move if the number were left out [-]; None where no term reads it
+    """
+
+    key: str
+    grade: str
+    touches: tuple[str, ...]
+    loss_share: float | None
+
+
+@dataclass(frozen=True)
 class EnergyAccount:
     """Where the energy of one pass went [J]; the residuals show how well the books close.
 
@@ -140,6 +171,7 @@ class MissionResult:
     energy, losses, battery, choice : accounts of one pass
     passes : passes that the relaxation took in its hardest block
     reach : where it asks the topology to operate
+    outside : terms that asked their tables beyond what those cover
     """
 
     name: str
@@ -152,6 +184,7 @@ class MissionResult:
     passes: int
     choice: ChoiceAccount | None = None
     reach: Reach | None = field(default=None, repr=False)
+    outside: tuple[OutsideEntry, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -162,6 +195,7 @@ class PartEntry:
     copies : equal places in the stage
     in_parallel : chips that share each place
     facts : label -> value as a person reads it, such as "inductance" -> "110 uH"
+    grades : key -> what its number is worth, where that is said
     """
 
     name: str
@@ -169,6 +203,7 @@ class PartEntry:
     copies: int
     in_parallel: int
     facts: Mapping[str, str]
+    grades: Mapping[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -295,6 +330,8 @@ class Outcome:
     binding : the limit with the greatest share in use, or None where the plan states none
     stage_facts : label -> value, the stage at a glance
     rules : sentences that every output echoes (signs, holding, terminals)
+    grades : what the graded numbers of parts are worth and what rests on them
+    placeholders : one sentence for each part that is invented
     """
 
     title: str
@@ -317,6 +354,8 @@ class Outcome:
     coarser: tuple[Coarser, ...] = ()
     packs: tuple[PackAnswer, ...] = ()
     coolant_loss: CoolantLoss | None = None
+    grades: tuple[GradeEntry, ...] = ()
+    placeholders: tuple[str, ...] = ()
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -359,6 +398,9 @@ class Outcome:
             "efficiency": _number(self.efficiency),
             "worst": _plain(self.worst, leave_out=("traces",)),
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
+            "outside_tables": {m.name: [_plain(entry) for entry in m.outside] for m in self.missions},
+            "grades": [_plain(entry) for entry in self.grades],
+            "placeholders": list(self.placeholders),
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
             "coolant_loss": _plain(self.coolant_loss),

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 import re
+from collections.abc import Callable
 from typing import Annotated, Any, NamedTuple
 
 from pydantic import BeforeValidator, WithJsonSchema
@@ -104,6 +105,31 @@ def parse(given: object, dimension: str) -> float:
         nature = _nature(unit)
         raise ValueError(f"found {given!r}, where the unit is {nature}; give a {dimension} such as {known.example!r}")
     return _finite(_scale(number, size), given, dimension)
+
+
+def column_unit(unit: str, dimension: str, where: str) -> Callable[[float], float]:
+    """Return what brings the numbers of a column with this unit to the base unit of its dimension.
+
+    Column names are often written in lower case throughout: "energy_mj" is read as millijoule, "energy_MJ" as
+    megajoule, "temperature_degc" as degree Celsius.
+
+    Raises
+    ------
+    ValueError
+        If the unit is of another dimension; `where` stands in front of the message.
+    """
+    known = DIMENSIONS[dimension]
+    size = _unit_size(unit, known)
+    if size is None:
+        units = {**known.plain, **known.prefixed}
+        units |= {f"{p}{u}": _PREFIXES[p] * s for u, s in known.prefixed.items() for p in "pnumk"}
+        lower = {name.lower(): found for name, found in units.items()}
+        size = lower.get(unit.lower()) if unit == unit.lower() else None
+    if size is None:
+        raise ValueError(
+            f"{where}: the unit {unit!r} is {_nature(unit)}; wanted is a {dimension}, such as {known.base}"
+        )
+    return lambda number: _scale(number, size)
 
 
 def _unit_size(unit: str, dimension: Dimension) -> float | None:

@@ -12,10 +12,12 @@ from tideleg.accounts import battery_entry, choice_account, energy_account, loss
 from tideleg.battery import Battery
 from tideleg.caution import Safety, SafetyFacts, safety
 from tideleg.columns import steps_frame
+from tideleg.coverage import outside_entries, outside_warnings
 from tideleg.demand import battery_of, demand_of, profile_of
 from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
 from tideleg.feasible import refuse_impossible_power, refuse_infeasible_rest, refuse_infeasible_steps
+from tideleg.grades import Marched, grade_entries, placeholder_words
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
@@ -46,10 +48,7 @@ RULES = (
 )
 
 
-NEVER_MODELLED = (
-    "wear and life of parts: no life model in this release",
-    "spread between chips in parallel: not modelled in this release",
-)
+NEVER_MODELLED = ("wear and life of parts: no life model in this release",)
 """Mechanisms that no data can bring into this release; page one says so every time."""
 
 
@@ -132,6 +131,7 @@ def _run_mission(
         passes=max(block.passes for block in blocks),
         choice=choice_account(stage, demand, blocks),
         reach=reach_of(stage, battery, demand, profile.name),
+        outside=outside_entries(stage, demand, blocks),
     )
     return MissionRun(profile, demand, blocks, steps, result)
 
@@ -187,10 +187,18 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         changes=(),
         safety=_safety(plan, stage, battery, steps),
         not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
-        warnings=warnings + cautions,
+        warnings=(
+            *warnings,
+            *cautions,
+            *(line for name, r in runs.items() for line in outside_warnings(name, r.result.outside)),
+        ),
         rules=(*RULES, *getattr(stage.topology, "assumptions", ())),
         inputs=inputs_of(plan, [r.profile for r in runs.values()]),
         plan_file=plan.file,
+        grades=grade_entries(
+            plan, stage, [Marched(r.result.passes_per_year, r.demand, r.blocks) for r in runs.values()]
+        ),
+        placeholders=placeholder_words(plan),
     )
 
 

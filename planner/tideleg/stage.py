@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import partial
 from typing import Any, NamedTuple
 
@@ -22,9 +22,10 @@ from tideleg.contract import (
     Topology,
     read_as,
 )
+from tideleg.dies import DIODE, dies_of, leaves_to_diode, refuse_wrong_ways, with_diodes
 from tideleg.errors import InputError
 from tideleg.heat import Modes, modes
-from tideleg.plan import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase, read_table
+from tideleg.plan import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase, read_table
 from tideleg.registry import Registry, call_plugin, installed
 from tideleg.rolloff import LinkageCurve, effective_inductance
 from tideleg.waveform import FloatArray, Values
@@ -34,6 +35,7 @@ WHOLE_STAGE = (Slot("busbar", "busbar", "busbar"), Slot("control", "control", "c
 
 _BASES: dict[str, dict[str, Any]] = {
     "switch": {"base": SwitchBase},
+    "diode": {"base": DiodeBase},
     "inductor": {"base": InductorBase},
     "transformer": {"base": TransformerBase},
     "capacitor": {"base": CapacitorBase},
@@ -57,16 +59,34 @@ class BoundTerm:
 class StagePart:
     """One sort of part in a stage.
 
-    slot : its place in the topology
-    base : core-known data (SwitchBase, InductorBase, CapacitorBase) or None
-    in_parallel : chips that share the current of one place; broadcastable to (C, 1)
+    slot : its place in the topology, or that of a die beside it (see `dies`)
+    base : core-known data (SwitchBase, DiodeBase, InductorBase, CapacitorBase) or None
+    in_parallel : such chips in one place; broadcastable to (C, 1)
     terms : the loss terms that its data support
+    host : name of the topology's slot whose current it carries; None for its own
+    chip_share : current of one chip over that of its place [-]; None for equal shares
+    decides : False for chips that another of their place is always hotter than: no limit need look at them
+    forward_only : whether the reverse current of its place is carried by a diode of its own
     """
 
     slot: Slot
     base: Any
     in_parallel: Values
     terms: tuple[BoundTerm, ...]
+    host: str | None = None
+    chip_share: Values | None = None
+    decides: bool = True
+    forward_only: bool = False
+
+    @property
+    def place(self) -> str:
+        """Name of the topology's slot whose current it carries."""
+        return self.slot.name if self.host is None else self.host
+
+    @property
+    def share(self) -> Values:
+        """Current of one chip over that of its place [-]."""
+        return 1.0 / self.in_parallel if self.chip_share is None else self.chip_share
 
     @property
     def total(self) -> Values:
@@ -108,9 +128,9 @@ class Stage:
     parts: tuple[StagePart, ...]
     modes: Modes | None
     inductance: Mapping[str, Values]
-    rolloff: Mapping[str, LinkageCurve]
     not_modelled: tuple[str, ...]
     registry: Registry
+    rolloff: Mapping[str, LinkageCurve] = field(default_factory=dict)
 
     @property
     def seated(self) -> tuple[str, ...]:
@@ -183,7 +203,7 @@ class Stage:
         index = {name: i for i, name in enumerate(self.seated)}
         for part in self.parts:
             name = part.slot.name
-            reading = self._reading(part, operation, point)
+            reading = self.reading(part, operation, point)
             # Parts of a slot that rest in this step (a shed leg) spend nothing; the heat of those that work is the
             # slot's, evenly, since the ones that rest take turns.
             working = getattr(reading, "copies", part.slot.copies)
@@ -201,14 +221,14 @@ class Stage:
                     ohmic += watts
         return Losses(operation, total, by_term, heat, slope, self._path_resistance(operation, ohmic))
 
-    def _reading(self, part: StagePart, operation: Operation, point: Point) -> Any:
+    def reading(self, part: StagePart, operation: Operation, point: Point) -> Any:
         """Return what the loss terms of one part read: its waveform, scaled to one chip."""
         name, kind = part.slot.name, part.slot.kind
-        if kind == "switch":
-            position = operation.positions[name]
-            if np.all(np.asarray(part.in_parallel) == 1):
+        if kind in ("switch", "diode"):
+            position = operation.positions[part.place]
+            if np.all(np.asarray(part.share) == 1.0):
                 return position
-            return position._replace(current=position.current.scaled(1.0 / part.in_parallel))
+            return position._replace(current=position.current.scaled(part.share))
         if read_as(kind) == "inductor":
             return operation.windings[name]
         if kind == "capacitor":
@@ -216,6 +236,12 @@ class Stage:
         link_current = operation.exchanges["link_capacitor"].current.mean()
         active = point.active.astype(np.float64)
         return Flow(point.battery_voltage, point.link_voltage, point.battery_current, link_current, active)
+
+    def by_name(self, mean: FloatArray, held: FloatArray, shape: tuple[int, ...]) -> dict[str, FloatArray]:
+        """Return the mean temperature of every part [degC]; one without a thermal path is held at the coolant."""
+        rest = np.broadcast_to(held, shape)
+        seated = {name: mean[i] for i, name in enumerate(self.seated)}
+        return {part.slot.name: seated.get(part.slot.name, rest) for part in self.parts}
 
     def _path_resistance(self, operation: Operation, ohmic: FloatArray) -> FloatArray:
         """Return all ohmic loss over the squared leg current, per leg [Ω]: what one leg's current must overcome.
@@ -245,22 +271,26 @@ def build_stage(plan: Plan, registry: Registry | None = None) -> Stage:
     slots = (*call_plugin(registry, topology, partial(topology.slots, settings)), *WHOLE_STAGE)
     _refuse_unknown_names(plan, registry, slots)
     cooling = registry.cooling(plan.cooling.model) if plan.cooling is not None else None
-    parts, cooled, missing = [], [], []
-    for slot in slots:
+    parts: list[StagePart] = []
+    cooled, missing = [], []
+    for slot, place, has_diode in with_diodes(slots, plan.stage.parts):
         data = _part_data(plan, registry, slot)
-        terms, lacking = _bound_terms(plan, registry, slot, data)
+        terms, lacking = _bound_terms(plan, registry, slot, data, has_diode)
         base = data.get("base")
-        in_parallel = getattr(base, "in_parallel", 1)
-        parts.append(StagePart(slot, base, in_parallel, terms))
+        host = next((p.base for p in parts if p.slot.name == place), base)
+        chips, spread = _of_chips("in_parallel", base, host, 1), _of_chips("sharing_spread", base, host, 0.0)
+        for die in dies_of(slot, int(chips), float(spread)):
+            parts.append(StagePart(die.slot, base, die.chips, terms, place, die.share, die.decides, has_diode))
+            if cooling is not None and read_as(slot.kind) in cooling.part_settings:
+                seat = data[f"cooling {cooling.name}"]
+                cooled.append(CooledPart(die.slot.name, slot.kind, slot.copies * die.chips, seat))
         missing += [(slot, name) for name in lacking]
-        if cooling is not None and read_as(slot.kind) in cooling.part_settings:
-            cooled.append(CooledPart(slot.name, slot.kind, slot.copies * in_parallel, data[f"cooling {cooling.name}"]))
     thermal = _thermal(plan, registry, cooling, cooled)
     inductors = [p for p in parts if p.slot.kind == "inductor"]
     inductance = {p.slot.name: p.base.inductance for p in inductors}
     rolloff = {p.slot.name: LinkageCurve.of(p.base.inductance_curve) for p in inductors if p.base.inductance_curve}
     return Stage(
-        topology, settings, tuple(parts), thermal, inductance, rolloff, _not_modelled(missing, parts, thermal), registry
+        topology, settings, tuple(parts), thermal, inductance, _not_modelled(missing, parts, thermal), registry, rolloff
     )
 
 
@@ -285,6 +315,12 @@ def without_coolant(plan: Plan, registry: Registry | None = None) -> Stage | Non
     return build_stage(plan.model_copy(update={"cooling": table}), registry)
 
 
+def _of_chips(key: str, base: Any, host: Any, default: Any) -> Any:
+    """Return a number of the chips of a part: its own, or for a diode that gives none that of its switch."""
+    own = getattr(base, key, None)
+    return getattr(host, key, default) if own is None else own
+
+
 def _part_data(plan: Plan, registry: Registry, slot: Slot) -> dict[str, Any]:
     """Return the validated keys of one part's table: the core's own, each loss model's, each cooling model's."""
     wanted: dict[str, Any] = dict(_BASES.get(slot.kind, {}))
@@ -292,11 +328,11 @@ def _part_data(plan: Plan, registry: Registry, slot: Slot) -> dict[str, Any]:
     for model in registry.cooling_models():
         if read_as(slot.kind) in model.part_settings:
             wanted[f"cooling {model.name}"] = model.part_settings[read_as(slot.kind)]
-    return read_table(plan, f"stage.{slot.table}", plan.stage.parts.get(slot.table, {}), wanted)
+    return read_table(plan, f"stage.{slot.table}", plan.stage.keys_of(slot.table), wanted)
 
 
 def _bound_terms(
-    plan: Plan, registry: Registry, slot: Slot, data: dict[str, Any]
+    plan: Plan, registry: Registry, slot: Slot, data: dict[str, Any], has_diode: bool
 ) -> tuple[tuple[BoundTerm, ...], list[str]]:
     """Return the loss terms that one part's data support, and the mechanisms that lack data or were left out."""
     terms: list[BoundTerm] = []
@@ -308,9 +344,12 @@ def _bound_terms(
         if model.name not in plan.losses.leave_out:
             offered = call_plugin(registry, model, partial(model.terms, data[f"loss {model.name}"]))
         given = {term.mechanism for term in offered}
-        lacking += [name for name in model.mechanisms if name not in given]
+        if not (has_diode and leaves_to_diode(model)):
+            lacking += [name for name in model.mechanisms if name not in given]
         terms += [BoundTerm(model, term) for term in offered]
     _refuse_twin_terms(slot, terms)
+    if slot.kind == "switch":
+        refuse_wrong_ways(slot, {bound.model.name: bound.model for bound in terms}.values(), has_diode)
     given = {bound.term.mechanism for bound in terms}
     return tuple(terms), [name for name in lacking if name not in given]
 
@@ -325,7 +364,12 @@ def _thermal(plan: Plan, registry: Registry, cooling: CoolingModel | None, coole
 
 def _refuse_unknown_names(plan: Plan, registry: Registry, slots: tuple[Slot, ...]) -> None:
     tables = {slot.table for slot in slots}
-    for name in plan.stage.parts:
+    for name, keys in plan.stage.parts.items():
+        kind = next((slot.kind for slot in slots if slot.table == name), None)
+        inner = [key for key, value in keys.items() if isinstance(value, dict) and (kind, key) != ("switch", DIODE)]
+        if kind is not None and inner:
+            what = f"found the table [stage.{name}.{inner[0]}], which no {kind} has"
+            raise plan.fault(f"stage.{name}.{inner[0]}", f"{what}; of tables inside a part there is a switch's diode")
         if name not in tables:
             known = ", ".join(sorted(tables))
             what = f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have"
@@ -352,14 +396,18 @@ def _not_modelled(missing: list[tuple[Slot, str]], parts: list[StagePart], therm
     """Return one sentence for each mechanism and each temperature without data, slots of one table together."""
     by_mechanism: dict[tuple[str, str], None] = {(slot.table, name): None for slot, name in missing}
     seated = set() if thermal is None else set(thermal.parts)
-    sentences = [f"{name} of {table.replace('_', ' ')}: no data given" for table, name in by_mechanism]
+    sentences = [f"{name} of {_table_words(table)}: no data given" for table, name in by_mechanism]
+    alike = {p.slot.table: None for p in parts if p.chip_share is not None and p.in_parallel > 1 and p.decides}
+    sentences += [f"uneven sharing of chips in parallel of {_table_words(t)}: no sharing_spread given" for t in alike]
     level = {p.slot.table: None for p in parts if p.slot.kind == "inductor" and not p.base.inductance_curve}
     sentences += [
-        f"fall of the inductance of {table.replace('_', ' ')} with current: no inductance_curve given, held constant"
+        f"fall of the inductance of {_table_words(table)} with current: no inductance_curve given, held constant"
         for table in level
     ]
     held = {p.slot.table: None for p in parts if p.slot.kind not in ("busbar", "control") and p.slot.name not in seated}
-    sentences += [
-        f"temperature of {table.replace('_', ' ')}: no thermal path given, held at the coolant" for table in held
-    ]
+    sentences += [f"temperature of {_table_words(table)}: no thermal path given, held at the coolant" for table in held]
     return tuple(sentences)
+
+
+def _table_words(table: str) -> str:
+    return table.replace("_", " ").replace(".", " ")

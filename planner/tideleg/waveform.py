@@ -122,6 +122,17 @@ class Waveform:
             found = pick(found, here)
         return _array(found)
 
+    def forward(self) -> Waveform:
+        """Return the part of the current above zero; the rest of each run stays in place as zero current.
+
+        A segment that crosses zero is split there, so mean and mean square of `forward` and `reverse` add up exactly.
+        """
+        return Waveform(tuple(_clipped(piece, 0.0, np.inf) for s in self.segments for piece in _at_zero(s)))
+
+    def reverse(self) -> Waveform:
+        """Return the part of the current below zero, signed; see `forward`."""
+        return Waveform(tuple(_clipped(piece, -np.inf, 0.0) for s in self.segments for piece in _at_zero(s)))
+
     def scaled(self, factor: Values) -> Waveform:
         """Return the waveform with every current multiplied by `factor` [-]."""
         return Waveform(tuple(Segment(s.place, s.width, s.start * factor, s.end * factor) for s in self.segments))
@@ -220,6 +231,20 @@ class Waveform:
 
 def _array(value: Any) -> FloatArray:
     return np.asarray(value, dtype=np.float64)
+
+
+def _at_zero(segment: Segment) -> tuple[Segment, Segment]:
+    """Return a segment in two pieces that meet where it crosses zero; without a crossing the second has no width."""
+    place, width, start, end = (_array(field) for field in segment)
+    crosses = start * end < 0.0
+    share = np.where(crosses, start / np.where(crosses, start - end, 1.0), 1.0)
+    middle = np.where(crosses, 0.0, end)
+    first = width * share
+    return Segment(place, first, start, middle), Segment(place + first, width - first, middle, end)
+
+
+def _clipped(segment: Segment, least: float, greatest: float) -> Segment:
+    return segment._replace(start=np.clip(segment.start, least, greatest), end=np.clip(segment.end, least, greatest))
 
 
 def _tilt_factor(x: FloatArray) -> FloatArray:

@@ -58,6 +58,8 @@ def _traces(stage: Stage, operation: Operation, row: int, shape: tuple[int, ...]
     for part in stage.parts:
         name, kind = part.slot.name, part.slot.kind
         label = name.replace("_", " ")
+        if name != part.place:
+            continue
         if read_as(kind) == "inductor":
             traces.append(_trace(f"{label} current", name, operation.windings[name].current, row, shape, frequency))
         elif kind == "switch":

@@ -60,7 +60,7 @@ Cell = tuple[Annotated[quantity.ThermalResistance, Field(gt=0.0)], Annotated[qua
 
 
 class SwitchSeat(BaseModel):
-    """Keys of [stage.switch]: Foster cells of ONE chip from junction to plate, and an interface in series."""
+    """Keys of [stage.switch] and its diode: Foster cells of ONE chip from junction to plate, an interface in series."""
 
     model_config = ConfigDict(extra="forbid")
 
@@ -111,7 +111,12 @@ class Plate:
     source: str = "chains on a shared plate: series and sum of heat; coolant rise P/(rho cp q): energy balance"
     settings: type[BaseModel] = PlateSettings
     part_settings: Mapping[PartKind, type[BaseModel]] = field(
-        default_factory=lambda: {"switch": SwitchSeat, "inductor": InductorSeat, "capacitor": CapacitorSeat}
+        default_factory=lambda: {
+            "switch": SwitchSeat,
+            "diode": SwitchSeat,
+            "inductor": InductorSeat,
+            "capacitor": CapacitorSeat,
+        }
     )
 
     def without_coolant(self, settings: PlateSettings) -> PlateSettings | None:
@@ -152,7 +157,7 @@ LOST_RESISTANCE = 1e6
 
 def _seat(part: CooledPart) -> Seat | None:
     keys: Any = part.settings
-    if part.kind == "switch":
+    if part.kind in ("switch", "diode"):
         if keys.junction_to_plate is None:
             return None
         cells = tuple((float(r), float(tau)) for r, tau in keys.junction_to_plate)

@@ -74,6 +74,7 @@ class DeadTime:
     reads: PartKind = "switch"
     mechanisms: tuple[str, ...] = ("dead time",)
     settings: type[BaseModel] = DeadTimeSettings
+    carries: str = "reverse"
 
     def terms(self, settings: DeadTimeSettings) -> tuple[LossTerm[Position], ...]:
         """Return the term if a diode voltage is given."""

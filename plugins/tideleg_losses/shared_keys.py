@@ -28,15 +28,16 @@ def refuse_double_count(settings: BaseModel, stated_key: str, has_data: bool, wh
 
     Parameters
     ----------
-    settings : a model with the key turn_on_energy
+    settings : a model with the keys turn_on_energy and turn_on_energy_curve
     stated_key : the key by which the person says so; None where nothing is said
     has_data : whether the mechanism's own data are given
     what : the mechanism, in words
     """
-    stated, turn_on_energy = getattr(settings, stated_key), getattr(settings, "turn_on_energy", None)
-    if stated and turn_on_energy is None:
+    stated = getattr(settings, stated_key)
+    turn_on_energy = any(getattr(settings, key) is not None for key in ("turn_on_energy", "turn_on_energy_curve"))
+    if stated and not turn_on_energy:
         raise ValueError(f"turn_on_energy is missing: {stated_key} = true says that it holds {what}; give it")
-    if has_data and turn_on_energy is not None and stated is None:
+    if has_data and turn_on_energy and stated is None:
         raise ValueError(
             f"{stated_key} is missing: turn_on_energy of a data sheet usually holds {what} already, and both together"
             f" would count it twice; say true (it is then not added) or false (it is)"

@@ -11,10 +11,10 @@ import os
 import sys
 from collections.abc import Sequence
 
-from tideleg.command import compare, derate, plugins, profile, reach, run, schema, size, start
+from tideleg.command import compare, derate, parts, plugins, profile, reach, run, schema, size, start
 from tideleg.errors import InputError, NoEquilibriumError
 
-COMMANDS = (run, size, compare, reach, derate, profile, plugins, schema, start)
+COMMANDS = (run, size, compare, reach, derate, profile, parts, plugins, schema, start)
 
 DONE, BAD_INPUT, NOT_HELD, INTERRUPTED = 0, 2, 3, 130
 

@@ -55,12 +55,11 @@ def _list(given: argparse.Namespace) -> int:
 
 
 def _check(given: argparse.Namespace) -> int:
-    from tideleg.conformance.by_plan import plugin_checks
+    from tideleg.conformance.by_plan import plugin_checks, shipped_plan
     from tideleg.plan import load_plan
     from tideleg.registry import installed
-    from tideleg.scenario import scenarios_folder
 
-    plan = load_plan(given.plan or scenarios_folder() / "kerbside" / "plan.toml")
+    plan = load_plan(given.plan) if given.plan else shipped_plan(given.name, installed())
     broken = 0
     for check in plugin_checks(given.name, plan, installed()):
         try:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import tomllib
 from collections.abc import Iterator, Mapping
 from typing import Any
 
@@ -13,15 +14,18 @@ from tideleg.conformance.losses import loss_checks
 from tideleg.conformance.topologies import topology_checks
 from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
 from tideleg.errors import InputError
-from tideleg.plan import Plan
+from tideleg.plan import Plan, load_plan, plan_from_mapping
+from tideleg.plan.generic import GENERIC
 from tideleg.quantity import parse
 from tideleg.registry import Plugin, Registry
+from tideleg.scenario import scenarios_folder
 
 GREATEST_CURRENT = 300.0
 """Battery current either way up to which a topology is asked [A]."""
 
 TABLES: dict[PartKind, tuple[str, ...]] = {
     "switch": ("switch",),
+    "diode": ("switch.diode",),
     "inductor": ("inductor",),
     "transformer": ("transformer",),
     "capacitor": ("link_capacitor", "battery_capacitor"),
@@ -93,10 +97,26 @@ def _legs(topology: Topology, settings: Mapping[str, object]) -> int:
 
 
 def _loss(model: LossModel, plan: Plan) -> Iterator[Check]:
+    yield from loss_checks(model, _loss_settings(model, plan))
+
+
+def _loss_settings(model: LossModel, plan: Plan) -> dict[str, object]:
     settings: dict[str, object] = {}
     for table in TABLES[model.reads]:
-        settings = settings or _own(plan.stage.parts.get(table, {}), model.settings)
-    yield from loss_checks(model, settings)
+        settings = settings or _own(plan.stage.keys_of(table), model.settings)
+    return settings
+
+
+def shipped_plan(name: str, registry: Registry) -> Plan:
+    """Return a shipped plan with data for the plugin of that name: with MOSFETs, or with IGBTs and their diodes."""
+    file = scenarios_folder() / "kerbside" / "plan.toml"
+    plan = load_plan(file)
+    models = [p.offer for p in registry.plugins if p.name == name and p.kind == "loss"]
+    if all(m.terms(m.settings.model_validate(_loss_settings(m, plan))) for m in models):
+        return plan
+    data = tomllib.loads(file.read_text(encoding="utf-8"))
+    data["stage"]["switch"] = {"part": f"{GENERIC}igbt-1700v"}
+    return plan_from_mapping(data, folder=file.parent)
 
 
 def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
@@ -104,7 +124,7 @@ def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
     parts: dict[PartKind, Mapping[str, object]] = {}
     for kind, keys in model.part_settings.items():
         for table in TABLES[kind]:
-            parts[kind] = parts.get(kind) or _own(plan.stage.parts.get(table, {}), keys)
+            parts[kind] = parts.get(kind) or _own(plan.stage.keys_of(table), keys)
     yield from cooling_checks(model, own, parts)
 
 

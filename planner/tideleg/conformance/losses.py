@@ -19,7 +19,7 @@ def reading(kind: PartKind, current: FloatArray, ripple: float = 20.0) -> Any:
     """Return what a loss term of that kind reads at some mean currents [A] with a ripple peak-to-peak [A]."""
     low, high = current - 0.5 * ripple, current + 0.5 * ripple
     triangle = Waveform((Segment(0.0, 0.45, low, high), Segment(0.45, 0.55, high, low)))
-    if kind == "switch":
+    if kind in ("switch", "diode"):
         driven = np.ones_like(current)
         return Position(Waveform((Segment(0.0, 0.45, low, high),)), 750.0, 750.0, driven)
     if kind == "inductor":
@@ -103,11 +103,35 @@ def _broadcasts(model: LossModel, term: LossTerm[Any]) -> None:
 
 
 def _same_both_ways_or_edge(model: LossModel, term: LossTerm[Any]) -> None:
-    if term.ohmic:
+    both_ways = model.reads != "diode" and getattr(model, "carries", "both") == "both"
+    if term.ohmic and both_ways:
         current = np.array([[100.0, 37.0]])
         there, back = (_watts(model, term, sign * current, 0.0, TEMPERATURE) for sign in (1.0, -1.0))
-        # Dead time at the diode's edges is taken from the channel in one direction only: a few percent.
-        require_close(there, back, np.abs(there), 0.1, "ohmic loss in the two directions")
+        # The diode takes the dead times and a part of a large current in reverse alone; still it is one resistance.
+        require_close(there, back, np.abs(there), 0.5, "ohmic loss in the two directions")
+
+
+def _tells_outside(model: LossModel, term: LossTerm[Any]) -> None:
+    outside = getattr(term, "outside", None)
+    if outside is None:
+        return
+    for shape in ((1, 12), (3, 12)):
+        current = np.broadcast_to(np.linspace(-400.0, 400.0, 12), shape)
+        mask = np.asarray(outside(reading(model.reads, current), TIMING, np.full(shape, TEMPERATURE)))
+        assert mask.dtype == np.bool_, f"where it is asked beyond its table is no mask but {mask.dtype}"
+        try:
+            np.broadcast_to(mask, shape)
+        except ValueError:
+            raise AssertionError(f"where it is asked beyond its table has the shape {mask.shape}") from None
+
+
+def _goes_on_beyond(model: LossModel, term: LossTerm[Any]) -> None:
+    if not hasattr(term, "outside"):
+        return
+    for degc in (-60.0, 25.0, 300.0):
+        watts = _watts(model, term, np.linspace(-3000.0, 3000.0, 61)[None, :], 20.0, degc)
+        require_finite(watts, "loss beyond the table")
+        assert np.all(watts >= 0.0), f"{watts.min():.6g} W beyond the table at {degc:g} degC"
 
 
 _PROMISES: dict[str, Callable[[LossModel, LossTerm[Any]], None]] = {
@@ -116,4 +140,6 @@ _PROMISES: dict[str, Callable[[LossModel, LossTerm[Any]], None]] = {
     "its slope in temperature is true": _slope_is_true,
     "candidates broadcast": _broadcasts,
     "an ohmic loss is alike both ways": _same_both_ways_or_edge,
+    "it tells where it is asked beyond its table": _tells_outside,
+    "beyond its table it stays finite and not negative": _goes_on_beyond,
 }

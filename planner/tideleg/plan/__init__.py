@@ -1,12 +1,14 @@
 """The plan: what the user writes, validated; no physics."""
 
 from tideleg.plan.curve import Curve
+from tideleg.plan.parts import GRADES
 from tideleg.plan.reading import load_plan, plan_from_mapping, read_table
-from tideleg.plan.schema import plan_schema
+from tideleg.plan.schema import part_schema, plan_schema
 from tideleg.plan.tables import (
     BatteryTable,
     CapacitorBase,
     CoolingTable,
+    DiodeBase,
     InductorBase,
     LimitsTable,
     LinkTable,
@@ -22,10 +24,12 @@ from tideleg.plan.tables import (
 from tideleg.plan.writing import format_quantity, write_plan
 
 __all__ = [
+    "GRADES",
     "BatteryTable",
     "CapacitorBase",
     "CoolingTable",
     "Curve",
+    "DiodeBase",
     "InductorBase",
     "LimitsTable",
     "LinkTable",
@@ -39,6 +43,7 @@ __all__ = [
     "VehicleTable",
     "format_quantity",
     "load_plan",
+    "part_schema",
     "plan_from_mapping",
     "plan_schema",
     "read_table",

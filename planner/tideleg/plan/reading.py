@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-import tomllib
 from collections.abc import Mapping
 from pathlib import Path
-from typing import Any, NamedTuple
+from typing import Any
 
 from pydantic import BaseModel, ValidationError
 
@@ -15,20 +14,10 @@ from tideleg.plan.curve import Curve
 from tideleg.plan.curves import COLUMNS, read_curve
 from tideleg.plan.faults import dotted, errors_of, unknown_key, words
 from tideleg.plan.lines import line_of
+from tideleg.plan.parts import part_tables
+from tideleg.plan.source import Source, read_toml
 from tideleg.plan.tables import Plan
 from tideleg.quantity import parse
-
-
-class Source(NamedTuple):
-    """Where a plan comes from: its file and text (None and "" for one made in Python), and its folder."""
-
-    file: Path | None
-    text: str
-    folder: Path
-
-    def fault(self, key: str, what: str) -> PlanError:
-        """Return the error for one key."""
-        return PlanError(what, file=self.file, key=key, line=line_of(self.text, key) if self.text else None)
 
 
 def load_plan(path: str | Path) -> Plan:
@@ -40,28 +29,13 @@ def load_plan(path: str | Path) -> Plan:
         If the file is missing, is no TOML, or holds anything that cannot be used: file, line and key are named.
     """
     file = Path(path)
-    data, text = _toml(file)
+    data, text = read_toml(file)
     return _plan(data, Source(file, text, file.parent))
 
 
 def plan_from_mapping(data: Mapping[str, Any], *, folder: str | Path = ".") -> Plan:
     """Return a plan from the mapping that its TOML file would hold; relative file names start at `folder`."""
     return _plan(dict(data), Source(None, "", Path(folder)))
-
-
-def _toml(file: Path) -> tuple[dict[str, Any], str]:
-    try:
-        text = file.read_text(encoding="utf-8-sig")
-    except FileNotFoundError:
-        raise PlanError("the file does not exist; check the path", file=file) from None
-    except OSError as error:
-        raise PlanError(f"the file cannot be read ({error.strerror})", file=file) from None
-    except UnicodeDecodeError:
-        raise PlanError("the file is not UTF-8 text; save it so", file=file) from None
-    try:
-        return tomllib.loads(text), text
-    except tomllib.TOMLDecodeError as error:
-        raise PlanError(f"not valid TOML: {error}", file=file) from None
 
 
 def _plan(data: dict[str, Any], source: Source) -> Plan:
@@ -148,20 +122,18 @@ def _battery(data: dict[str, Any], source: Source, files: list[Path]) -> dict[st
 
 def _stage(data: dict[str, Any], source: Source, files: list[Path]) -> dict[str, Any]:
     """Return [stage] as topology, settings and part tables, with part files merged in under inline keys."""
-    parts = {key: dict(value) for key, value in data.items() if isinstance(value, dict)}
     settings = {key: value for key, value in data.items() if not isinstance(value, dict) and key != "topology"}
-    origins: dict[str, Path] = {}
-    for table, keys in parts.items():
-        if "part" not in keys:
-            continue
-        file = source.folder / str(keys.pop("part"))
-        if not file.is_file():
-            raise source.fault(f"stage.{table}.part", f"found {file.name!r}, which is no file; check the name")
-        given, _ = _toml(file)
-        files.append(file)
-        origins |= {f"stage.{table}.{key}": file for key in given if key not in keys}
-        parts[table] = {**given, **keys}
-    shaped: dict[str, Any] = {"settings": settings, "parts": parts, "origins": origins}
+    parts, notes = part_tables(data, source)
+    files += notes.files
+    shaped: dict[str, Any] = {
+        "settings": settings,
+        "parts": parts,
+        "origins": notes.origins,
+        "grades": notes.grades,
+        "overridden": notes.overridden,
+        "placeholders": tuple(notes.placeholders),
+        "part_files": notes.part_files,
+    }
     return {"topology": data["topology"], **shaped} if "topology" in data else shaped
 
 
@@ -202,7 +174,7 @@ def _table_faults(plan: Plan, key: str, faults: dict[str, str]) -> PlanError:
         whole = f"{key}.{name}" if name else key
         file = plan.stage.origins.get(whole, plan.file)
         if file is not None and file != plan.file:
-            line = line_of(file.read_text(encoding="utf-8-sig"), name)
+            line = _line_in_part_file(file, whole)
         else:
             line = line_of(plan.text, whole) if plan.text else None
         made.append(PlanError(what, file=file, key=whole, line=line))
@@ -210,6 +182,17 @@ def _table_faults(plan: Plan, key: str, faults: dict[str, str]) -> PlanError:
         return made[0]
     text = "\n".join([made[0].fault, *(str(one) for one in made[1:])])
     return PlanError(text, file=made[0].file, key=made[0].key, line=made[0].line)
+
+
+def _line_in_part_file(file: Path, key: str) -> int | None:
+    """Return the line of a dotted key of the plan in the part file that it came from, in which it is shorter."""
+    text = file.read_text(encoding="utf-8-sig")
+    names = key.split(".")
+    for begin in range(2, len(names)):
+        line = line_of(text, ".".join(names[begin:]))
+        if line is not None:
+            return line
+    return None
 
 
 __all__ = ["load_plan", "plan_from_mapping", "read_table", "tables"]

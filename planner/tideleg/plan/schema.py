@@ -8,10 +8,12 @@ from typing import Any
 from pydantic import BaseModel
 
 from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
-from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase
+from tideleg.plan.parts import GRADES
+from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
     "switch": [SwitchBase],
+    "diode": [DiodeBase],
     "inductor": [InductorBase],
     "transformer": [TransformerBase],
     "capacitor": [CapacitorBase],
@@ -38,6 +40,15 @@ def plan_schema(
     definitions["StageTable"] = _stage(topologies, loss_models, cooling_models)
     definitions["CoolingTable"] = _cooling(cooling_models)
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
+
+
+def part_schema(
+    kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+) -> dict[str, Any]:
+    """Return the JSON Schema (draft 2020-12) of a part file: the keys of one kind of part, without a further file."""
+    schema = _part(kind, loss_models, cooling_models)
+    schema["properties"].pop("part")
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", "title": f"part file: {kind}", **schema}
 
 
 def _stage(
@@ -75,9 +86,20 @@ def _slots(topology: Topology) -> Sequence[Any]:
 def _part(kind: PartKind, loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
     models = [*_BASES[kind], *(m.settings for m in loss_models if m.reads == read_as(kind))]
     models += [m.part_settings[read_as(kind)] for m in cooling_models if read_as(kind) in m.part_settings]
-    keys: dict[str, Any] = {"part": {"type": "string", "description": "file (TOML) whose keys are merged in"}}
+    keys: dict[str, Any] = {
+        "part": {"type": "string", "description": "file (TOML) whose keys are merged in, or generic:NAME"},
+        "grades": {
+            "type": "object",
+            "description": "what the number of a key is worth; * stands for all keys of this table",
+            "additionalProperties": {"enum": list(GRADES)},
+        },
+        "placeholder": {"type": "boolean", "description": "whether the part is invented; page one says so"},
+    }
     for model in models:
         keys |= _properties(model)
+    if kind == "switch":
+        keys["diode"] = _part("diode", loss_models, cooling_models)
+        keys["diode"]["description"] = "a diode on a die of its own, which carries all reverse current"
     return {"type": "object", "properties": keys, "additionalProperties": False}
 
 

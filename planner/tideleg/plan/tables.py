@@ -116,12 +116,27 @@ class StageTable(Table):
     """[stage]: the topology, its keys as written, and the part tables as written; plugins validate both.
 
     origins : file of each part key that came from a part file, by dotted key
+    grades : worth of each part key that has one: measured, datasheet, typical or guess, by dotted key
+    overridden : what a part file gives for a key that the plan gives itself, by dotted key
+    placeholders : dotted tables whose part is invented
+    part_files : part file of each dotted table that names one, as written
     """
 
     topology: str
     settings: dict[str, Any] = {}
     parts: dict[str, dict[str, Any]] = {}
     origins: dict[str, Path] = {}
+    grades: dict[str, str] = {}
+    overridden: dict[str, Any] = {}
+    placeholders: tuple[str, ...] = ()
+    part_files: dict[str, str] = {}
+
+    def keys_of(self, table: str) -> dict[str, Any]:
+        """Return the keys of a part table by its dotted name, without the tables inside it; empty where none is."""
+        found: Any = self.parts
+        for name in table.split("."):
+            found = found.get(name, {})
+        return {name: value for name, value in found.items() if not isinstance(value, dict)}
 
 
 class CoolingTable(Table):
@@ -199,7 +214,16 @@ class SwitchBase(Table):
 
     name: str | None = None
     in_parallel: int = Field(default=1, ge=1)
+    sharing_spread: Annotated[q.Share, Field(ge=0.0, lt=1.0)] = 0.0
     rated_voltage: Annotated[q.Voltage, Positive] | None = None
+
+
+class DiodeBase(Table):
+    """Core-known keys of a diode on a die of its own; what is left out is as its switch has it."""
+
+    name: str | None = None
+    in_parallel: int | None = Field(default=None, ge=1)
+    sharing_spread: Annotated[q.Share, Field(ge=0.0, lt=1.0)] | None = None
 
 
 class InductorBase(Table):

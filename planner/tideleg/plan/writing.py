@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import math
 import os
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -15,6 +15,7 @@ import tomlkit
 from tomlkit.items import Table
 
 from tideleg.plan.curves import COLUMNS
+from tideleg.plan.generic import GENERIC
 from tideleg.plan.tables import Plan
 from tideleg.quantity import DIMENSIONS, parse
 
@@ -90,5 +91,16 @@ def _move_files(document: Any, before: Path, after: Path) -> None:
         if isinstance(given, str) and given.lower().endswith(".csv"):
             document["battery"][key] = moved(str(given))
     for table in document.get("stage", {}).values():
-        if isinstance(table, Table) and "part" in table:
-            table["part"] = moved(str(table["part"]))
+        if isinstance(table, Table):
+            _move_part_files(table, moved)
+
+
+def _move_part_files(table: Table, moved: Callable[[str], str]) -> None:
+    """Rewrite the part file and the CSV files of points that a part table names, also in the tables inside it."""
+    for key, value in table.items():
+        if isinstance(value, Table):
+            _move_part_files(value, moved)
+        elif isinstance(value, str) and value.startswith(GENERIC):
+            continue
+        elif isinstance(value, str) and (key == "part" or value.lower().endswith(".csv")):
+            table[key] = moved(str(value))

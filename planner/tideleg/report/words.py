@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from tideleg.coverage import flagged
 from tideleg.limits import LimitCheck
-from tideleg.outcome import Change, Coarser, CoolantLoss, MissionResult, Outcome, PackAnswer
+from tideleg.outcome import Change, Coarser, CoolantLoss, GradeEntry, MissionResult, Outcome, PackAnswer
+from tideleg.plan import GRADES
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
@@ -21,6 +23,14 @@ PACK_HEADS = (
 )
 CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
 BROKEN = "DOES NOT HOLD"
+
+GUESS_MATTERS = 0.01
+"""A guess on which more than this share of the loss rests stands on page one [-]."""
+
+MOST_GUESSES = 6
+
+MOST_NAMED = 4
+"""How many tables page one names in a sentence; all stand in the warnings."""
 
 
 def plain(name: str) -> str:
@@ -165,7 +175,30 @@ def _sure_answer(outcome: Outcome) -> str:
     absent, warned = len(outcome.not_modelled), len(outcome.warnings)
     missing = "every mechanism known has data" if absent == 0 else f"{absent} things are not modelled for lack of data"
     warning = "no warnings" if warned == 0 else f"{warned} warning{'s' if warned > 1 else ''}"
-    return sentence(f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)")
+    told = f"energy closes to {closure(outcome):.0e} of the throughput; {missing}; {warning} (listed below)"
+    return sentence(f"{told}{_placeholder_words(outcome)}{_outside_words(outcome)}")
+
+
+def _placeholder_words(outcome: Outcome) -> str:
+    """Return how many parts are invented; "" where none is."""
+    count = len(outcome.placeholders)
+    return (
+        f"; {count} part{'s are PLACEHOLDERS' if count > 1 else ' is a PLACEHOLDER'} with invented numbers"
+        if count
+        else ""
+    )
+
+
+def _outside_words(outcome: Outcome) -> str:
+    """Return which tables of points were asked beyond what they cover by more than a hundredth; "" where none was."""
+    beyond = [(m.name, entry) for m in outcome.missions for entry in flagged(m.outside)]
+    named = ", ".join(
+        f"{e.mechanism} of {plain(e.part)} ({100.0 * e.time_share:.2g} % of the time, {100.0 * e.energy_share:.2g} % of"
+        f" its energy, {mission})"
+        for mission, e in beyond[:MOST_NAMED]
+    )
+    more = f" and {len(beyond) - MOST_NAMED} more" if len(beyond) > MOST_NAMED else ""
+    return f"; EXTRAPOLATED beyond the points given: {named}{more}" if beyond else ""
 
 
 def closure(outcome: Outcome) -> float:
@@ -195,6 +228,7 @@ def sureness(outcome: Outcome) -> list[str]:
     if outcome.coolant_loss is not None:
         lines.append(_without_coolant(outcome.coolant_loss))
     lines += [_resolution(one) for one in outcome.coarser]
+    lines += [*outcome.placeholders, *_grades(outcome)]
     lines += [f"warning: {warning}" for warning in outcome.warnings]
     return lines
 
@@ -208,6 +242,32 @@ def _without_coolant(loss: CoolantLoss) -> str:
     if loss.runs_away:
         return f"{origin}, {part} finds no steady temperature after {loss.seconds:.3g} s"
     return f"{origin}, {part} reaches its {loss.limit_degc:g} degC after {loss.seconds:.3g} s"
+
+
+def _grades(outcome: Outcome) -> list[str]:
+    """Return how many numbers of parts are worth what, and the guesses that the most of the loss rests on."""
+    if not outcome.grades:
+        return []
+    counts = {grade: sum(e.grade == grade for e in outcome.grades) for grade in GRADES}
+    told = ", ".join(f"{count} {grade}" for grade, count in counts.items() if count)
+    heavy = [e for e in outcome.grades if e.grade == "guess" and (e.loss_share or 0.0) > GUESS_MATTERS]
+    warm = [e for e in outcome.grades if e.grade == "guess" and e.loss_share is None and e.touches]
+    lines = [f"numbers of parts by what they are worth: {told}; the others are not graded"]
+    lines += [f"guess: {_guess(entry)}" for entry in (*heavy[:MOST_GUESSES], *warm[:MOST_GUESSES])]
+    rest = counts["guess"] - len(heavy[:MOST_GUESSES]) - len(warm[:MOST_GUESSES])
+    return [*lines, f"{rest} more guesses stand in summary.json"] if rest > 0 else lines
+
+
+def _guess(entry: GradeEntry) -> str:
+    """Return one guess in words: key, share of the loss that rests on it, and what that is."""
+    by_what: dict[str, list[str]] = {}
+    for touched in entry.touches:
+        what, _, part = touched.partition(" of ")
+        by_what.setdefault(part, []).append(what)
+    told = "; ".join(f"{', '.join(whats)} of {part}" for part, whats in by_what.items())
+    if entry.loss_share is None:
+        return f"{entry.key} sets the {told}"
+    return f"{entry.key}: {100.0 * entry.loss_share:.2g} % of the loss rests on it ({told})"
 
 
 def _resolution(one: Coarser) -> str:

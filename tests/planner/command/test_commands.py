@@ -28,7 +28,7 @@ def test_help_and_import_load_neither_pandas_nor_matplotlib():
     )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr
-    for command in ("run", "size", "compare", "profile", "plugins", "schema", "start"):
+    for command in ("run", "size", "compare", "profile", "parts", "plugins", "schema", "start"):
         assert command in done.stdout
 
 

@@ -11,7 +11,7 @@ import pytest
 from tideleg import Line, Waveform
 from tideleg.command import main
 from tideleg.conformance import loss_checks, topology_checks
-from tideleg.conformance.by_plan import plugin_checks
+from tideleg.conformance.by_plan import plugin_checks, shipped_plan
 from tideleg.errors import InputError
 from tideleg.plan import load_plan
 from tideleg.registry import installed
@@ -19,7 +19,7 @@ from tideleg.starter import KINDS, new_plugin
 
 KERBSIDE = load_plan(Path(__file__).parents[3] / "profiles" / "kerbside" / "plan.toml")
 NAMES = sorted({plugin.name for plugin in installed().plugins})
-EVERY = [check for name in NAMES for check in plugin_checks(name, KERBSIDE, installed())]
+EVERY = [check for name in NAMES for check in plugin_checks(name, shipped_plan(name, installed()), installed())]
 
 
 @pytest.mark.parametrize("check", EVERY, ids=lambda c: f"{c.plugin}:{c}")
@@ -157,3 +157,40 @@ def test_from_the_command_line(capsys, tmp_path):
     assert main(["plugins", "check", "half-brige"]) == 2
     assert main(["plugins", "new", "loss", "my-loss", str(tmp_path / "n")]) == 0
     assert main(["plugins", "new", "loss", "my-loss", str(tmp_path / "n")]) == 2
+
+
+class Extrapolating:
+    """A term of a loss model that says wrongly where it was asked beyond its table."""
+
+    mechanism, ohmic, heats = "made up", False, True
+
+    def __init__(self, outside):
+        self.outside = outside
+
+    def at(self, part, timing, temperature):
+        watts = np.zeros_like(temperature)
+        return Line(watts, watts)
+
+
+@pytest.mark.parametrize(
+    "outside",
+    [
+        lambda part, timing, temperature: np.zeros(np.shape(temperature)),
+        lambda part, timing, temperature: np.zeros((7, 3), dtype=bool),
+    ],
+    ids=["numbers", "another shape"],
+)
+def test_a_mask_of_what_lies_outside_that_is_none_is_named(outside):
+    model = dataclasses.replace(installed().loss_models()[0])
+
+    class Model:
+        name, mechanisms, reads = "made-up", ("made up",), "switch"
+        settings = model.settings
+
+        @staticmethod
+        def terms(settings):
+            return (Extrapolating(outside),)
+
+    (check,) = [c for c in loss_checks(Model(), {}) if "tells-where" in str(c)]
+    with pytest.raises(AssertionError, match="beyond its table"):
+        check()

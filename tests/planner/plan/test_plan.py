@@ -248,6 +248,46 @@ def test_the_schema_accepts_every_shipped_plan_and_refuses_a_slip(name):
     assert not validator.is_valid(data)
 
 
+def test_the_schema_knows_diodes_points_and_grades_and_refuses_slips_in_them():
+    import copy
+
+    import jsonschema
+
+    r = installed()
+    validator = jsonschema.Draft202012Validator(plan_schema(r.topologies(), r.loss_models(), r.cooling_models()))
+    rows = [
+        {"current": "50 A", "temperature": "25 degC", "energy": "1 mJ"},
+        {"current": 9, "temperature": 25, "energy": 0},
+    ]
+    diode = {"knee_voltage": "1 V", "recovery_energy_curve": rows, "recovery_in_turn_on": False}
+    switch = {"part": "x.toml", "turn_on_energy_curve": "e.csv", "turn_off_energy_curve": [["5 A", "1 mJ"], [50, 1e-2]]}
+    switch |= {"grades": {"*": "guess"}, "placeholder": True, "sharing_spread": "10 %", "diode": diode}
+    plan = {
+        "title": "t",
+        "battery": {"open_circuit_voltage": 400},
+        "link": {"voltage": 700},
+        "stage": {
+            "topology": "half-bridge",
+            "switching_frequency": "9 kHz",
+            "inductor": {"inductance": 1e-4},
+            "switch": switch,
+        },
+        "mission": [{"profile": "p.csv"}],
+    }
+    assert [error.message for error in validator.iter_errors(plan)] == []
+    slips = [
+        ("grades", {"*": "sure"}),
+        ("placeholder", "yes"),
+        ("diode", {"knee_volts": 1}),
+        ("turn_off_energy_curve", [["5 A", "1 mJ", 3], [50, 1e-2]]),
+        ("turn_off_energy_curve", [{"amps": 3, "energy": 1}, {"current": 3, "energy": 1}]),
+    ]
+    for key, wrong in slips:
+        other = copy.deepcopy(plan)
+        other["stage"]["switch"][key] = wrong
+        assert not validator.is_valid(other), key
+
+
 def test_one_table_shared_by_models_refuses_what_nobody_declares(plan_file):
     from tideleg.plan import InductorBase, SwitchBase
 

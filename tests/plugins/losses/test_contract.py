@@ -16,7 +16,10 @@ from tideleg_losses import (
     channel,
     core,
     dead_time,
+    diode,
+    diode_recovery,
     gate,
+    knee,
     output_charge,
     recovery,
     standby,
@@ -26,7 +29,99 @@ from tideleg_losses import (
 from tideleg_topologies import half_bridge
 
 TEST_POINT = {"test_current": "60 A", "test_voltage": "800 V"}
+ENERGIES = [
+    {
+        "current": i,
+        "temperature": t,
+        "voltage": v,
+        "energy": 1.1e-5 * i * (v / 800.0) ** 1.3 * (1 + 2e-3 * t) + 2e-8 * i**2,
+    }
+    for i in (20.0, 50.0, 110.0)
+    for t in (20.0, 130.0, 175.0)
+    for v in (500.0, 900.0)
+]
+RESISTANCES = [
+    {"current": i, "temperature": t, "resistance": 0.012 + 2e-5 * i + 6e-7 * (t - 10.0) ** 2}
+    for i in (15.0, 60.0, 140.0)
+    for t in (-40.0, 0.0, 30.0, 120.0, 175.0)
+]
 CASES: dict[str, tuple[LossModel, dict[str, Any]]] = {
+    "channel all keys": (
+        channel.loss_model(),
+        {
+            "on_resistance": "13 mohm",
+            "on_resistance_slope": "0.35 %/K",
+            "on_resistance_current_slope": 4e-4,
+            "reverse_on_resistance": "12.5 mohm",
+            "diode_voltage": "3.1 V",
+        },
+    ),
+    "channel with a body diode that takes over": (
+        channel.loss_model(),
+        {
+            "on_resistance": "13 mohm",
+            "on_resistance_slope": "0.4 %/K",
+            "diode_voltage": "1.2 V",
+            "diode_resistance": "2 mohm",
+            "diode_voltage_slope": -2e-3,
+        },
+    ),
+    "channel factor": (
+        channel.loss_model(),
+        {
+            "on_resistance": "13 mohm",
+            "on_resistance_factor": [[-40, 1.05], [0, 0.97], [25, 1.0], [100, 1.3], [175, 1.8]],
+        },
+    ),
+    "channel curve": (channel.loss_model(), {"on_resistance_curve": RESISTANCES}),
+    "channel curve both ways": (
+        channel.loss_model(),
+        {
+            "on_resistance_curve": RESISTANCES,
+            "reverse_on_resistance_curve": [[-40, 0.012], [30, 0.011], [175, 0.017]],
+            "diode_voltage": "3.1 V",
+        },
+    ),
+    "knee": (
+        knee.loss_model(),
+        {
+            "knee_voltage": "0.9 V",
+            "knee_voltage_slope": -1e-3,
+            "knee_resistance": "4 mohm",
+            "knee_resistance_slope": "0.3 %/K",
+        },
+    ),
+    "knee curve": (
+        knee.loss_model(),
+        {
+            "forward_voltage_curve": [
+                {"current": i, "temperature": t, "voltage": 0.8 - 1e-3 * t + (4e-3 + 1e-5 * t) * i}
+                for i in (10.0, 60.0, 200.0)
+                for t in (25.0, 125.0, 150.0)
+            ]
+        },
+    ),
+    "diode": (diode.loss_model(), {"knee_voltage": "1.1 V", "knee_resistance": "3 mohm"}),
+    "diode recovery": (
+        diode_recovery.loss_model(),
+        {"recovery_energy": "2 mJ", "recovery_in_turn_on": False, **TEST_POINT},
+    ),
+    "switching curves": (switching.loss_model(), {"turn_on_energy_curve": ENERGIES, "turn_off_energy_curve": ENERGIES}),
+    "switching curve that does not end at zero": (
+        switching.loss_model(),
+        {
+            "turn_on_energy_curve": [[0, 2e-4], [50, 9e-4], [120, 2.4e-3]],
+            "switching_energy_slope": "0.1 %/K",
+            "output_charge": "260 nC",
+            "test_voltage": "800 V",
+        },
+    ),
+    "recovery curve": (recovery.loss_model(), {"recovery_energy_curve": ENERGIES}),
+    "output charge curve": (
+        output_charge.loss_model(),
+        {"output_charge_curve": [[100, 1e-7], [400, 1.9e-7], [900, 2.7e-7]]},
+    ),
+    "output energy": (output_charge.loss_model(), {"output_energy": "60 uJ", "test_voltage": "800 V"}),
     "channel": (
         channel.loss_model(),
         {"on_resistance": "13 mohm", "on_resistance_slope": "0.35 %/K", "on_resistance_curvature": 8e-6},
@@ -140,7 +235,7 @@ def test_one_step_alone_is_the_same_as_among_many(kind: Any, term: Any) -> None:
 def test_a_number_of_the_data_may_differ_by_candidate(kind: Any, term: Any) -> None:
     """A size search gives arrays (C, 1): each candidate then loses what it would alone."""
     target = term.law if hasattr(term, "law") else term
-    names = ("resistance", "energy", "charge", "volume", "esr", "power", "voltage")
+    names = ("scale", "resistance", "energy", "charge", "volume", "esr", "power", "voltage")
     name = next((n for n in names if hasattr(target, n)), None)
     if name is None:
         assert not np.any(term.at(reading(kind, CURRENT), Timing(40e3, 200e-9), np.full_like(CURRENT, 80.0)).watts)
@@ -184,7 +279,8 @@ def test_what_comes_at_every_edge_grows_with_the_frequency(case: str) -> None:
 def test_what_shifts_the_duty_ratio_and_what_heats_elsewhere() -> None:
     """Only what lies in the way of the leg's current as a resistance is ohmic; only gate heat stays in the driver."""
     offered = [t for model, data in CASES.values() for t in model.terms(model.settings.model_validate(data))]
-    assert {term.mechanism for term in offered if term.ohmic} == {"channel conduction", "winding dc"}
+    ohmic = {"channel conduction", "diode conduction", "winding dc"}
+    assert {term.mechanism for term in offered if term.ohmic} == ohmic
     assert {term.mechanism for term in offered if not term.heats} == {"gate"}
 
 

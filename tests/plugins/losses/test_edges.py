@@ -13,7 +13,7 @@ from tideleg import Position, Segment, Timing, Waveform
 from tideleg_losses.channel import Channel, channel_mean_square
 from tideleg_losses.dead_time import DeadTime
 from tideleg_losses.edges import EnergyLaw
-from tideleg_losses.output_charge import OutputCharge, hard_share
+from tideleg_losses.output_charge import OutputCharge
 from tideleg_losses.recovery import Recovery
 from tideleg_losses.switching import Switching
 
@@ -117,24 +117,14 @@ def test_a_lower_voltage_at_turn_on_makes_it_cheaper_than_the_turn_off() -> None
     assert low["turn-off"] == high["turn-off"]
 
 
-@settings(max_examples=60)
-@given(st.floats(-20.0, 20.0), st.floats(0.0, 1e-6), st.floats(0.0, 1e-6))
-def test_the_hard_share_is_one_line_between_hard_and_soft(current: float, dead_time: float, charge: float) -> None:
-    share = float(hard_share(np.array([current]), dead_time, charge)[0])
-    if current >= 0.0 or dead_time == 0.0:
-        assert share == 1.0
-    elif charge > 1e-30:
-        assert share == pytest.approx(max(0.0, 1.0 - abs(current) * dead_time / (2.0 * charge)), abs=1e-12)
-
-
 def test_no_jump_into_soft_switching() -> None:
     model = OutputCharge()
     (term,) = model.terms(model.settings.model_validate({"output_charge": 3e-7, "test_voltage": 800.0}))
     current = np.linspace(-8.0, 8.0, 16_001)
     part = Position(Waveform((Segment(0.0, 0.4, current, current + 30.0),)), 750.0, 750.0, 1.0)
     found = term.at(part, TIMING, np.full_like(current, 80.0)).watts
-    # Swung by 2 Q/t_d = 2.3 A, so a milliampere may move 1/2300 of it.
-    assert np.max(np.abs(np.diff(found))) < found.max() / 2000.0
+    # Swung by 2 Q/t_d = 2.3 A; the first coulomb saves V, twice the mean: a milliampere may move 1/1150 of it.
+    assert np.max(np.abs(np.diff(found))) < found.max() / 1100.0
     assert found[0] == 0.0
     assert found[-1] == found.max() > 0.0
 
