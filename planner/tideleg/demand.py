@@ -17,8 +17,8 @@ REFERENCE_DEGC = 25.0
 """Temperature of parts without a thermal path where the plan gives no coolant either [degC]."""
 
 
-def battery_of(plan: Plan) -> Battery:
-    """Return the battery that a plan describes, its curves on one common grid."""
+def battery_of(plan: Plan, mission: MissionTable | None = None) -> Battery:
+    """Return the battery that a plan describes, its curves on one common grid, as one mission starts with it."""
     table = plan.battery
     charge = table.resistance if table.resistance_charge is None else table.resistance_charge
     curves = (table.open_circuit_voltage, table.resistance, charge)
@@ -32,7 +32,7 @@ def battery_of(plan: Plan) -> Battery:
         out,
         into,
         capacity=np.inf if table.capacity is None else table.capacity,
-        start_soc=low if table.start_soc is None else table.start_soc,
+        start_soc=_first_given(None if mission is None else mission.start_soc, table.start_soc, low),
         lowest_soc=low,
         highest_soc=high,
         pairs=tuple(table.rc_pairs),
@@ -61,6 +61,10 @@ def _on_grid(grid: FloatArray, degc: tuple[float, ...], curve: Curve) -> FloatAr
     rows = np.stack(list(own.values()))
     known = np.array([t for t in own if t is not None])
     return np.stack([np.interp(degc, known, rows[:, i]) for i in range(len(grid))], axis=1)
+
+
+def _first_given(*values: float | None) -> float:
+    return next(value for value in values if value is not None)
 
 
 def _or_infinite(limit: float | None) -> float:

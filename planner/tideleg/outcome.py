@@ -188,6 +188,34 @@ class MissionResult:
 
 
 @dataclass(frozen=True)
+class MissionYear:
+    """One mission over a year: hours, energy through the battery, loss of the stage and its share of the year's."""
+
+    mission: str
+    passes: float
+    hours: float
+    throughput_kwh: float
+    loss_kwh: float
+    loss_share: float
+
+
+@dataclass(frozen=True)
+class Year:
+    """A whole year.
+
+    missions : each over the year
+    standby_hours, standby_kwh, standby_share : with the gates off and the control alive
+    parked_hours : the rest, in which nothing is drawn
+    """
+
+    missions: tuple[MissionYear, ...]
+    standby_hours: float
+    standby_kwh: float
+    standby_share: float
+    parked_hours: float
+
+
+@dataclass(frozen=True)
 class PartEntry:
     """One sort of part in the stage.
 
@@ -354,6 +382,7 @@ class Outcome:
     coarser: tuple[Coarser, ...] = ()
     packs: tuple[PackAnswer, ...] = ()
     coolant_loss: CoolantLoss | None = None
+    year: Year | None = None
     grades: tuple[GradeEntry, ...] = ()
     placeholders: tuple[str, ...] = ()
 
@@ -403,6 +432,7 @@ class Outcome:
             "placeholders": list(self.placeholders),
             "wear": {},
             "battery": {m.name: _plain(m.battery) for m in self.missions},
+            "year": _plain(self.year),
             "coolant_loss": _plain(self.coolant_loss),
             "packs": [_plain(pack) for pack in self.packs],
             "resolution": [_plain(one) for one in self.coarser],

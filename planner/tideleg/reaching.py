@@ -85,11 +85,11 @@ def reach(plan: Plan | str | Path, *, registry: Registry | None = None) -> tuple
         If the plan or a profile cannot be used.
     """
     plan = plan if isinstance(plan, Plan) else load_plan(plan)
-    stage, battery = build_stage(plan, registry), battery_of(plan)
+    stage = build_stage(plan, registry)
     found = []
     for index, table in enumerate(plan.mission):
         profile = profile_of(plan, table)
-        found.append(reach_of(stage, battery, demand_of(plan, index, profile, stage), profile.name))
+        found.append(reach_of(stage, battery_of(plan, table), demand_of(plan, index, profile, stage), profile.name))
     return tuple(found)
 
 

@@ -28,6 +28,7 @@ from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
 from tideleg.verdict import cautions_of, verdict_sentence, warnings_of
 from tideleg.worst import worst_instant
+from tideleg.year import year_of
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -93,10 +94,9 @@ def run(
     if not isinstance(plan, Plan):
         plan = load_plan(plan)
     stage = build_stage(plan, registry)
-    battery = battery_of(plan)
     _refuse_twin_missions(plan)
-    runs = [_run_mission(plan, index, stage, battery, merged_steps, progress) for index in range(len(plan.mission))]
-    return _outcome(plan, stage, battery, {r.result.name: r for r in runs})
+    runs = [_run_mission(plan, index, stage, merged_steps, progress) for index in range(len(plan.mission))]
+    return _outcome(plan, stage, battery_of(plan), {r.result.name: r for r in runs})
 
 
 def _refuse_twin_missions(plan: Plan) -> None:
@@ -107,10 +107,9 @@ def _refuse_twin_missions(plan: Plan) -> None:
             raise plan.fault(f"mission.{index}.name", what)
 
 
-def _run_mission(
-    plan: Plan, index: int, stage: Stage, battery: Battery, merged_steps: int, progress: Progress | None
-) -> MissionRun:
+def _run_mission(plan: Plan, index: int, stage: Stage, merged_steps: int, progress: Progress | None) -> MissionRun:
     table = plan.mission[index]
+    battery = battery_of(plan, table)
     profile = profile_of(plan, table)
     profile = profile if merged_steps == 1 else coarsened(profile, merged_steps)
     demand = demand_of(plan, index, profile, stage)
@@ -180,6 +179,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         binding=binding,
         limits=checks,
         missions=results,
+        year=year_of(plan, stage, results),
         thermal=thermal,
         parts=part_entries(plan, stage),
         stage_facts=stage_facts(plan, stage),

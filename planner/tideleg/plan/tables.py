@@ -295,6 +295,13 @@ class MissionTable(Table):
     ambient: q.Temperature | None = None
     battery_temperature: q.Temperature | None = None
     start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
+    start_soc: Annotated[q.Share, Field(ge=0.0, le=1.0)] | None = None
+
+
+class YearTable(Table):
+    """[year]: hours beside the missions in which the stage stands by, gates off and control alive."""
+
+    standby_hours: float = Field(default=0.0, ge=0.0)
 
 
 class Plan(Table):
@@ -310,10 +317,24 @@ class Plan(Table):
     limits: LimitsTable = LimitsTable()
     vehicle: VehicleTable | None = None
     size: SizeTable | None = None
+    year: YearTable = YearTable()
     _file: Path | None = PrivateAttr(default=None)
     _folder: Path = PrivateAttr(default=Path())
     _text: str = PrivateAttr(default="")
     _extra_files: tuple[Path, ...] = PrivateAttr(default=())
+
+    @model_validator(mode="after")
+    def _missions_start_in_the_window(self) -> Self:
+        low, high = self.battery.soc_window
+        for i, mission in enumerate(self.mission):
+            soc = mission.start_soc
+            if soc is None:
+                continue
+            if self.battery.capacity is None:
+                raise ValueError(f"mission.{i}.start_soc: the battery has no capacity given, so no state of charge")
+            if not low <= soc <= high:
+                raise ValueError(f"mission.{i}.start_soc: found {soc:g}, outside soc_window [{low:g}, {high:g}]")
+        return self
 
     @property
     def file(self) -> Path | None:

@@ -95,6 +95,8 @@ def _books(outcome: Outcome) -> dict[str, Any]:
     size, unit = words.energy_scale(max((e.total_j for m in outcome.missions for e in m.losses), default=0.0))
     return {
         "losses": [(m.name, [_loss(entry, size, unit) for entry in m.losses]) for m in outcome.missions],
+        "year_heads": words.YEAR_HEADS,
+        "year": words.year_rows(outcome),
         "energy_heads": ("", *(m.name for m in outcome.missions)),
         "energy": words.energy_rows(outcome),
         "efficiency": words.efficiency_text(outcome.efficiency),

@@ -36,6 +36,8 @@ def print_page(outcome: Outcome, console: Console) -> None:
     _section(console, "Energy of one pass")
     _rows(console, words.energy_rows(outcome), ("", *(m.name for m in outcome.missions)))
     _pairs(console, [("efficiency over all missions", words.efficiency_text(outcome.efficiency))])
+    _section(console, "A year")
+    _rows(console, words.year_rows(outcome), words.YEAR_HEADS)
     if choices := words.choice_rows(outcome):
         _section(console, "Choices of the topology, made before each step is solved")
         _pairs(console, choices)

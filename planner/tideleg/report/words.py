@@ -286,6 +286,35 @@ def all_rules(outcome: Outcome) -> list[str]:
     return [*outcome.rules, *(f"{m.name}: {rule}" for m in outcome.missions for rule in m.rules)]
 
 
+YEAR_HEADS = ("a year", "passes", "hours", "through the battery", "lost in the stage", "share of the loss")
+
+
+def year_rows(outcome: Outcome) -> list[tuple[str, ...]]:
+    """Return the year as rows under `YEAR_HEADS`: every mission, standby, and what is left."""
+    year = outcome.year
+    if year is None:
+        return []
+    rows: list[tuple[str, ...]] = [
+        (
+            m.mission,
+            f"{m.passes:g}",
+            f"{m.hours:.5g} h",
+            f"{m.throughput_kwh:.5g} kWh",
+            f"{m.loss_kwh:.4g} kWh",
+            f"{100.0 * m.loss_share:.3g} %",
+        )
+        for m in year.missions
+    ]
+    standing = (
+        f"{year.standby_hours:.5g} h",
+        "-",
+        f"{year.standby_kwh:.4g} kWh",
+        f"{100.0 * year.standby_share:.3g} %",
+    )
+    rows.append(("standing by", "-", *standing))
+    return [*rows, ("parked, nothing drawn", "-", f"{year.parked_hours:.5g} h", "-", "-", "-")]
+
+
 def choice_rows(outcome: Outcome) -> list[tuple[str, str]]:
     """Return what the topology chose in each mission, and what that was worth."""
     rows = []
