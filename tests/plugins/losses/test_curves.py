@@ -475,3 +475,26 @@ def test_a_gate_resistance_beyond_its_points_is_refused(keys: dict[str, Any], wo
     with pytest.raises(ValidationError) as caught:
         SwitchingSettings.model_validate({"turn_on_energy_curve": BY_GATE, "test_voltage": 750.0, **keys})
     assert words in str(caught.value)
+
+
+@given(
+    st.lists(st.lists(st.floats(1e-4, 1e-2), min_size=4, max_size=4), min_size=3, max_size=3),
+    st.floats(-40.0, 175.0),
+    st.floats(10.0, 160.0),
+)
+def test_between_its_points_a_table_never_leaves_the_span_of_its_four_neighbours(
+    energies: list[list[float]], degc: float, current: float
+) -> None:
+    temps, amps = (-40.0, 30.0, 175.0), (10.0, 40.0, 90.0, 160.0)
+    points = [
+        {"current": i, "temperature": t, "energy": e}
+        for t, row in zip(temps, energies, strict=True)
+        for i, e in zip(amps, row, strict=True)
+    ]
+    keys = {"turn_on_energy_curve": points, "test_voltage": 750.0}
+    line, outside = asked(Switching(), keys, run([current], [0.0]), [degc])
+    t = min(np.searchsorted(temps, degc, side="right") - 1, 1)
+    k = min(np.searchsorted(amps, current, side="right") - 1, 2)
+    corners = [energies[a][b] for a in (t, t + 1) for b in (k, k + 1)]
+    assert min(corners) - 1e-12 <= line.watts[0] / 40e3 <= max(corners) + 1e-12
+    assert not outside[0]
