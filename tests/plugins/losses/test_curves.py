@@ -354,6 +354,14 @@ REFUSED: list[tuple[Any, dict[str, Any], str]] = [
         },
         "recovery_energy_by_gate_resistance is missing",
     ),
+    (ChannelSettings, {"on_resistance": 0.01, "on_resistance_polynomial": [4e-3, 0, -2e-7]}, "vanishes at"),
+    (ChannelSettings, {"on_resistance": 0.01, "on_resistance_polynomial": []}, "at least 1 item"),
+    (ChannelSettings, {"on_resistance_polynomial": [4e-3]}, "on_resistance is missing"),
+    (
+        ChannelSettings,
+        {"on_resistance": 0.01, "on_resistance_polynomial": [4e-3], "on_resistance_factor": [[25, 1], [99, 2]]},
+        "both say how temperature acts",
+    ),
     (KneeSettings, {"knee_resistance": 0.01}, "knee_voltage is missing"),
     (KneeSettings, {"knee_voltage": 0.9, "knee_voltage_slope": -0.01}, "at 250 degC"),
     (OutputChargeSettings, {"output_charge_curve": [[10, 2e-7], [20, 1e-7]]}, "falls with voltage"),
@@ -498,3 +506,14 @@ def test_between_its_points_a_table_never_leaves_the_span_of_its_four_neighbours
     corners = [energies[a][b] for a in (t, t + 1) for b in (k, k + 1)]
     assert min(corners) - 1e-12 <= line.watts[0] / 40e3 <= max(corners) + 1e-12
     assert not outside[0]
+
+
+@given(st.floats(-60.0, 250.0))
+def test_a_fit_of_third_order_is_the_polynomial_of_numpy(degc: float) -> None:
+    keys = {"on_resistance": 0.01, "on_resistance_polynomial": [-2e-4, 3.2e-5, -4e-8]}
+    line, outside = asked(Channel(), keys, run([10.0], [10.0], 1.0), [degc])
+    fit = np.poly1d([-4e-8, 3.2e-5, -2e-4, 1.0])
+    assert line.watts[0] == pytest.approx(float(fit(degc - 25.0)), rel=1e-12)
+    assert line.watts_per_kelvin[0] == pytest.approx(float(fit.deriv()(degc - 25.0)), rel=1e-9, abs=1e-12)
+    assert not outside[0]
+    assert asked(Channel(), keys, run([10.0], [10.0], 1.0), [251.0])[1][0]
