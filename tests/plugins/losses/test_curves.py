@@ -517,3 +517,12 @@ def test_a_fit_of_third_order_is_the_polynomial_of_numpy(degc: float) -> None:
     assert line.watts_per_kelvin[0] == pytest.approx(float(fit.deriv()(degc - 25.0)), rel=1e-9, abs=1e-12)
     assert not outside[0]
     assert asked(Channel(), keys, run([10.0], [10.0], 1.0), [251.0])[1][0]
+
+
+def test_points_at_no_voltage_are_read_as_such_and_an_edge_from_there_costs_nothing() -> None:
+    points = [{"current": i, "voltage": v, "energy": 2e-8 * i * v} for i in (10, 100) for v in (0.0, 400.0, 800.0)]
+    volts = np.array([-20.0, 0.0, 1.0, 600.0])
+    line, _ = asked(
+        Switching(), {"turn_on_energy_curve": points}, run(np.full(4, 50.0), 0.0, voltage=volts), np.full(4, 25.0)
+    )
+    np.testing.assert_allclose(line.watts, 40e3 * 1e-6 * np.array([0, 0, 1.0, 600.0]), rtol=1e-12)
