@@ -118,14 +118,14 @@ def battery_entry(battery: Battery, demand: Demand, steps: pd.DataFrame) -> Batt
 def thermal_entries(
     stage: Stage, demands: Mapping[str, Demand], gains: Mapping[str, FloatArray], steps: Mapping[str, pd.DataFrame]
 ) -> tuple[ThermalEntry, ...]:
-    """Return the temperatures of every part over all missions, hottest first.
+    """Return the temperatures of every part over all missions, hottest first; of uneven chips those of the hottest.
 
     gains : (seated part,) greatest loop gain at rest, by mission
     """
     entries = []
     for part in stage.parts:
         name = part.slot.name
-        if name in stage.seated:
+        if name in stage.seated and part.decides:
             entries.append(_seated_entry(name, stage.seated.index(name), demands, gains, steps))
     return tuple(sorted(entries, key=lambda entry: -entry.greatest_degc))
 

@@ -17,7 +17,7 @@ LIBRARIES = ("numpy", "pandas", "pydantic", "pluggy")
 """Packages whose version can change a number."""
 
 MOST_SHOWN = 6
-"""A list of a part table that is longer stands on the page as the number of its points."""
+"""A list of a part table that is longer stands on the page as the number of its rows."""
 
 
 def stage_facts(plan: Plan, stage: Stage) -> Mapping[str, str]:
@@ -105,7 +105,7 @@ def _volts(value: float) -> str:
 
 def _text(value: object) -> str:
     if isinstance(value, list) and len(value) > MOST_SHOWN:
-        return f"{len(value)} points"
+        return f"{len(value)} rows"
     if isinstance(value, dict):
         return ", ".join(f"{key} {_text(one)}" for key, one in value.items())
     if isinstance(value, list):

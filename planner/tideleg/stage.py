@@ -23,7 +23,7 @@ from tideleg.contract import (
     read_as,
 )
 from tideleg.dies import DIODE, dies_of, leaves_to_diode, refuse_wrong_ways, with_diodes
-from tideleg.errors import InputError
+from tideleg.errors import InputError, PlanError
 from tideleg.heat import Modes, modes
 from tideleg.plan import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase, read_table
 from tideleg.registry import Registry, call_plugin, installed
@@ -368,8 +368,10 @@ def _refuse_unknown_names(plan: Plan, registry: Registry, slots: tuple[Slot, ...
         kind = next((slot.kind for slot in slots if slot.table == name), None)
         inner = [key for key, value in keys.items() if isinstance(value, dict) and (kind, key) != ("switch", DIODE)]
         if kind is not None and inner:
-            what = f"found the table [stage.{name}.{inner[0]}], which no {kind} has"
-            raise plan.fault(f"stage.{name}.{inner[0]}", f"{what}; of tables inside a part there is a switch's diode")
+            key = f"stage.{name}.{inner[0]}"
+            what = f"found the table [{key}], which no {kind} has; of tables inside a part there is a switch's diode"
+            origin = next((file for of, file in plan.stage.origins.items() if of.startswith(f"{key}.")), None)
+            raise plan.fault(key, what) if origin is None else PlanError(what, file=origin, key=key)
         if name not in tables:
             known = ", ".join(sorted(tables))
             what = f"found the table [stage.{name}], which topology {plan.stage.topology!r} does not have"

@@ -12,7 +12,7 @@ from pydantic import BaseModel, ConfigDict, Field, model_validator
 from tideleg import FloatArray, Line, LossTerm, PartKind, PointTable, Position, Timing, Values, hookimpl, quantity
 from tideleg_losses.channel_curve import CurveChannelTerm
 from tideleg_losses.edges import diode_current_at_begin, diode_current_at_end
-from tideleg_losses.family import Family, family
+from tideleg_losses.family import Family, Span, family
 from tideleg_losses.moments import moments
 from tideleg_losses.point_keys import FactorPoints, ResistancePoints
 from tideleg_losses.shared_keys import refuse_keys_without
@@ -20,6 +20,8 @@ from tideleg_losses.third_quadrant import BodyDiode
 
 REFERENCE_DEGC = 25.0
 COLDEST_DEGC, HOTTEST_DEGC = -60.0, 250.0
+ACCEPTED = Span(COLDEST_DEGC, HOTTEST_DEGC)
+SHAPES = ("on_resistance_factor", "on_resistance_polynomial")
 FACTOR_TOLERANCE = 0.03
 """How far a factor curve may be from 1 at 25 degC: the width of a line on a printed curve."""
 
@@ -27,8 +29,9 @@ FACTOR_TOLERANCE = 0.03
 class ChannelSettings(BaseModel):
     """Keys of [stage.switch], of ONE chip: R(T, i) as a polynomial, with a factor curve, or as a table of points.
 
-    R(T, i) = on_resistance (1 + slope (T - 25) + curvature (T - 25)²) (1 + on_resistance_current_slope |i|); or
-    on_resistance times on_resistance_factor(T); or on_resistance_curve over temperature, current or both. Reverse
+    R(T, i) = on_resistance (1 + slope (T - 25) + curvature (T - 25)²) (1 + on_resistance_current_slope |i|); a fit of
+    any order gives its coefficients of (T - 25), (T - 25)², ... as on_resistance_polynomial; or R is on_resistance
+    times on_resistance_factor(T); or on_resistance_curve over temperature, current or both. Reverse
     current sees reverse_on_resistance (with the same temperature law) or reverse_on_resistance_curve where given.
     With the diode's keys the body diode takes its part of a large reverse current, and the dead times; a curve over
     current is taken as measured, its diode included.
@@ -39,6 +42,9 @@ class ChannelSettings(BaseModel):
     on_resistance: Annotated[quantity.Resistance, Field(gt=0.0)] | None = None
     on_resistance_slope: quantity.RelativeSlope = 0.0
     on_resistance_curvature: float = Field(default=0.0, description="1/K²", allow_inf_nan=False)
+    on_resistance_polynomial: Annotated[tuple[float, ...], Field(min_length=1, description="1/K, 1/K², ...")] | None = (
+        None
+    )
     on_resistance_current_slope: float = Field(default=0.0, ge=0.0, description="1/A", allow_inf_nan=False)
     on_resistance_factor: FactorPoints | None = None
     on_resistance_curve: ResistancePoints | None = None
@@ -51,14 +57,15 @@ class ChannelSettings(BaseModel):
     @model_validator(mode="after")
     def _one_way_of_giving_it(self) -> Self:
         polynomial = ("on_resistance_slope", "on_resistance_curvature")
-        others = ("on_resistance_current_slope", "reverse_on_resistance", "on_resistance_factor")
+        others = ("on_resistance_current_slope", "reverse_on_resistance", *SHAPES)
         refuse_keys_without(self, ("on_resistance",), (*polynomial, *others))
         refuse_keys_without(self, ("on_resistance_curve",), ("reverse_on_resistance_curve",))
         if self.on_resistance is not None and self.on_resistance_curve is not None:
             raise ValueError("found on_resistance and on_resistance_curve; give one of them")
-        twice = [key for key in polynomial if key in self.model_fields_set]
-        if self.on_resistance_factor is not None and twice:
-            raise ValueError(f"found on_resistance_factor and {twice[0]}; both say how temperature acts, give one")
+        shapes = [key for key in SHAPES if getattr(self, key) is not None]
+        twice = [*shapes, *(key for key in polynomial if key in self.model_fields_set)]
+        if shapes and len(twice) > 1:
+            raise ValueError(f"found {twice[0]} and {twice[1]}; both say how temperature acts, give one")
         for curve in (self.on_resistance_curve, self.reverse_on_resistance_curve):
             if curve is not None:
                 family(curve, "hold")
@@ -79,20 +86,47 @@ class ChannelSettings(BaseModel):
     def _stays_positive(self) -> Self:
         degc = np.linspace(COLDEST_DEGC, HOTTEST_DEGC, 311)
         factor = resistance_factor(degc, self.on_resistance_slope, self.on_resistance_curvature)
-        if np.any(factor <= 0.0):
-            at = degc[int(np.argmax(factor <= 0.0))]
+        what = (
+            f"on_resistance_slope and on_resistance_curvature: found {self.on_resistance_slope:g} 1/K and"
+            f" {self.on_resistance_curvature:g} 1/K²"
+        )
+        if self.on_resistance_polynomial is not None:
+            factor = Polynomial(self.on_resistance_polynomial).at(0.0, 0.0, degc)[0]
+            what = f"on_resistance_polynomial: found {', '.join(f'{c:g}' for c in self.on_resistance_polynomial)}"
+        if not np.all(factor > 0.0):
+            at = degc[int(np.argmin(factor > 0.0))]
             raise ValueError(
-                f"on_resistance_slope and on_resistance_curvature: found {self.on_resistance_slope:g} 1/K and"
-                f" {self.on_resistance_curvature:g} 1/K², with which the resistance vanishes at {at:.0f} degC;"
+                f"{what}, with which the resistance vanishes at {at:.0f} degC;"
                 f" it must stay positive from {COLDEST_DEGC:.0f} to {HOTTEST_DEGC:.0f} degC"
             )
         return self
+
+    def factor(self) -> Family | Polynomial | None:
+        """Return R(T)/R(25 degC) where it is a curve or a polynomial of any order."""
+        if self.on_resistance_polynomial is not None:
+            return Polynomial(self.on_resistance_polynomial)
+        return None if self.on_resistance_factor is None else family(self.on_resistance_factor, "hold")
 
     def body_diode(self) -> BodyDiode | None:
         """Return the body diode where its voltage is given."""
         if self.diode_voltage is None:
             return None
         return BodyDiode(self.diode_voltage, self.diode_resistance, self.diode_voltage_slope)
+
+
+@dataclass(frozen=True)
+class Polynomial:
+    """1 + c1 (T - 25) + c2 (T - 25)² + ...; a fit that was accepted because it is positive from -60 to 250 degC."""
+
+    coefficients: tuple[float, ...]
+    over_degc: Span = ACCEPTED
+
+    def at(self, current: Values, voltage: Values, degc: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return the factor and its slope [1/K]; beyond the accepted range the end is held."""
+        inside = np.clip(degc, *self.over_degc)
+        fit = np.polynomial.Polynomial([1.0, *self.coefficients])
+        rise = inside - REFERENCE_DEGC
+        return np.asarray(fit(rise)), np.where(inside == degc, fit.deriv()(rise), 0.0)
 
 
 def resistance_factor(degc: FloatArray, slope: Values, curvature: Values) -> FloatArray:
@@ -116,7 +150,7 @@ class ChannelTerm:
     """R(T) times the mean square: Joule's law. Infineon, PFC boost converter design guide, DN 2013-01, Eq. 17.
 
     diode_counted : whether a dead-time loss takes the diode's share of the run; else the channel keeps it
-    factor : R(T)/R(25 degC) as a curve, in place of slope and curvature
+    factor : R(T)/R(25 degC) as a curve or a polynomial, in place of slope and curvature
     current_slope : rise with the current [1/A]
     reverse_ratio : resistance in reverse over that forward [-]
     body_diode : takes its part of the reverse current; None where not known
@@ -126,7 +160,7 @@ class ChannelTerm:
     slope: Values
     curvature: Values
     diode_counted: bool
-    factor: Family | None = None
+    factor: Family | Polynomial | None = None
     current_slope: Values = 0.0
     reverse_ratio: Values = 1.0
     body_diode: BodyDiode | None = None
@@ -149,7 +183,7 @@ class ChannelTerm:
         return Line(np.maximum(watts - less.watts, 0.0), slope - less.watts_per_kelvin)
 
     def outside(self, part: Position, timing: Timing, temperature: FloatArray) -> NDArray[np.bool_]:
-        """Return where the temperature lies beyond the factor curve."""
+        """Return where the temperature lies beyond the factor."""
         if self.factor is None:
             return np.zeros(np.shape(temperature), dtype=bool)
         return self.factor.over_degc.beyond(temperature)
@@ -205,7 +239,7 @@ class Channel:
                 s.on_resistance_slope,
                 s.on_resistance_curvature,
                 s.diode_voltage is not None,
-                None if s.on_resistance_factor is None else family(s.on_resistance_factor, "hold"),
+                s.factor(),
                 s.on_resistance_current_slope,
                 1.0 if s.reverse_on_resistance is None else s.reverse_on_resistance / s.on_resistance,
                 None if s.on_resistance_current_slope else s.body_diode(),

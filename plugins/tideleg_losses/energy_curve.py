@@ -51,7 +51,9 @@ class EnergyCurve:
     def _by_voltage(self, voltage: Values) -> FloatArray:
         low, high = self.points.over_voltage
         test = np.clip(voltage, low, high) if np.isfinite(low) else self.test_voltage
-        return np.maximum(voltage / np.asarray(test), 0.0) ** self.voltage_exponent
+        test = np.asarray(test)
+        ratio = np.where(test > 0.0, voltage / np.where(test > 0.0, test, 1.0), 0.0)
+        return np.asarray(np.maximum(ratio, 0.0) ** self.voltage_exponent)
 
 
 def edge_outside(law: object, current: FloatArray, voltage: Values, degc: FloatArray) -> NDArray[np.bool_]:

@@ -203,6 +203,7 @@ def test_the_unlucky_chip_decides_and_the_books_hold_all_chips(plan_of: Any) -> 
     )
     junctions = [c for c in uneven.limits if c.name == "junction temperature"]
     assert {c.part for c in junctions} == {"upper_switch", "lower_switch"}
+    assert {t.part for t in uneven.thermal} == {"upper_switch", "lower_switch"}
     frame = uneven.steps
     chips = frame["upper_switch.loss_w"] + 2.0 * frame["upper_switch_others.loss_w"]
     position = [e for e in uneven.missions[0].losses if e.part in ("upper_switch", "upper_switch_others")]

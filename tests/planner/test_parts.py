@@ -164,6 +164,11 @@ knee_resistance = "3 mohm"
     assert (caught.value.line, "chip.toml" in str(caught.value)) == (3, True)
 
 
+def test_a_table_inside_a_part_file_that_no_part_has_is_named_with_the_file(write: Any) -> None:
+    with pytest.raises(PlanError, match="chip.toml.*which no switch has"):
+        run(write(text=PART.replace("[grades]", "[driver]\nvoltage = 3\n[grades]")))
+
+
 def test_any_part_table_takes_a_part_file(write: Any, tmp_path: Path) -> None:
     (tmp_path / "coil.toml").write_text(
         'inductance = "300 uH"\nwinding_resistance = "4 mohm"\n[grades]\n"*" = "guess"\n'

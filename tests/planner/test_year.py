@@ -83,16 +83,15 @@ def test_sub_missions_are_the_concatenated_run(tmp_path):
     twice = "\n".join([header, *(",".join(r) for r in rows[:-1]), *later]) + "\n"
     (tmp_path / "c" / "twice.csv").write_text(twice)
 
-    def outcome_of(**changes):
-        missions = []
-        for change in changes.pop("missions"):
-            missions.append(plan.mission[0].model_copy(update={"start": "periodic", **change}))
-        return run(plan.model_copy(update={"mission": tuple(missions)}))
+    def outcome_of(*changes):
+        only = plan.mission[0]
+        missions = tuple(only.model_copy(update={"start": "periodic", **change}) for change in changes)
+        return run(plan.model_copy(update={"mission": missions}))
 
     assert 'profile = "' in text
-    whole = outcome_of(missions=[{"profile": "twice.csv", "name": "whole"}]).missions[0]
+    whole = outcome_of({"profile": "twice.csv", "name": "whole"}).missions[0]
     middle = float(whole.steps["soc"].iloc[len(rows) - 2])
-    first, second = outcome_of(missions=[{"name": "first"}, {"name": "second", "start_soc": middle}]).missions
+    first, second = outcome_of({"name": "first"}, {"name": "second", "start_soc": middle}).missions
     for what in ("throughput_j", "link_out_j", "link_in_j", "battery_out_j", "battery_in_j", "loss_j"):
         parts = getattr(first.energy, what) + getattr(second.energy, what)
         assert parts == pytest.approx(getattr(whole.energy, what), rel=1e-3), what

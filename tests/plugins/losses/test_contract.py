@@ -73,6 +73,10 @@ CASES: dict[str, tuple[LossModel, dict[str, Any]]] = {
             "on_resistance_factor": [[-40, 1.05], [0, 0.97], [25, 1.0], [100, 1.3], [175, 1.8]],
         },
     ),
+    "channel polynomial": (
+        channel.loss_model(),
+        {"on_resistance": "13 mohm", "on_resistance_polynomial": [-2e-4, 3.2e-5, -4e-8]},
+    ),
     "channel curve": (channel.loss_model(), {"on_resistance_curve": RESISTANCES}),
     "channel curve both ways": (
         channel.loss_model(),

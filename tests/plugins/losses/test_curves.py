@@ -354,6 +354,14 @@ REFUSED: list[tuple[Any, dict[str, Any], str]] = [
         },
         "recovery_energy_by_gate_resistance is missing",
     ),
+    (ChannelSettings, {"on_resistance": 0.01, "on_resistance_polynomial": [4e-3, 0, -2e-7]}, "vanishes at"),
+    (ChannelSettings, {"on_resistance": 0.01, "on_resistance_polynomial": []}, "at least 1 item"),
+    (ChannelSettings, {"on_resistance_polynomial": [4e-3]}, "on_resistance is missing"),
+    (
+        ChannelSettings,
+        {"on_resistance": 0.01, "on_resistance_polynomial": [4e-3], "on_resistance_factor": [[25, 1], [99, 2]]},
+        "both say how temperature acts",
+    ),
     (KneeSettings, {"knee_resistance": 0.01}, "knee_voltage is missing"),
     (KneeSettings, {"knee_voltage": 0.9, "knee_voltage_slope": -0.01}, "at 250 degC"),
     (OutputChargeSettings, {"output_charge_curve": [[10, 2e-7], [20, 1e-7]]}, "falls with voltage"),
@@ -475,3 +483,46 @@ def test_a_gate_resistance_beyond_its_points_is_refused(keys: dict[str, Any], wo
     with pytest.raises(ValidationError) as caught:
         SwitchingSettings.model_validate({"turn_on_energy_curve": BY_GATE, "test_voltage": 750.0, **keys})
     assert words in str(caught.value)
+
+
+@given(
+    st.lists(st.lists(st.floats(1e-4, 1e-2), min_size=4, max_size=4), min_size=3, max_size=3),
+    st.floats(-40.0, 175.0),
+    st.floats(10.0, 160.0),
+)
+def test_between_its_points_a_table_never_leaves_the_span_of_its_four_neighbours(
+    energies: list[list[float]], degc: float, current: float
+) -> None:
+    temps, amps = (-40.0, 30.0, 175.0), (10.0, 40.0, 90.0, 160.0)
+    points = [
+        {"current": i, "temperature": t, "energy": e}
+        for t, row in zip(temps, energies, strict=True)
+        for i, e in zip(amps, row, strict=True)
+    ]
+    keys = {"turn_on_energy_curve": points, "test_voltage": 750.0}
+    line, outside = asked(Switching(), keys, run([current], [0.0]), [degc])
+    t = min(np.searchsorted(temps, degc, side="right") - 1, 1)
+    k = min(np.searchsorted(amps, current, side="right") - 1, 2)
+    corners = [energies[a][b] for a in (t, t + 1) for b in (k, k + 1)]
+    assert min(corners) - 1e-12 <= line.watts[0] / 40e3 <= max(corners) + 1e-12
+    assert not outside[0]
+
+
+@given(st.floats(-60.0, 250.0))
+def test_a_fit_of_third_order_is_the_polynomial_of_numpy(degc: float) -> None:
+    keys = {"on_resistance": 0.01, "on_resistance_polynomial": [-2e-4, 3.2e-5, -4e-8]}
+    line, outside = asked(Channel(), keys, run([10.0], [10.0], 1.0), [degc])
+    fit = np.poly1d([-4e-8, 3.2e-5, -2e-4, 1.0])
+    assert line.watts[0] == pytest.approx(float(fit(degc - 25.0)), rel=1e-12)
+    assert line.watts_per_kelvin[0] == pytest.approx(float(fit.deriv()(degc - 25.0)), rel=1e-9, abs=1e-12)
+    assert not outside[0]
+    assert asked(Channel(), keys, run([10.0], [10.0], 1.0), [251.0])[1][0]
+
+
+def test_points_at_no_voltage_are_read_as_such_and_an_edge_from_there_costs_nothing() -> None:
+    points = [{"current": i, "voltage": v, "energy": 2e-8 * i * v} for i in (10, 100) for v in (0.0, 400.0, 800.0)]
+    volts = np.array([-20.0, 0.0, 1.0, 600.0])
+    line, _ = asked(
+        Switching(), {"turn_on_energy_curve": points}, run(np.full(4, 50.0), 0.0, voltage=volts), np.full(4, 25.0)
+    )
+    np.testing.assert_allclose(line.watts, 40e3 * 1e-6 * np.array([0, 0, 1.0, 600.0]), rtol=1e-12)
