@@ -26,7 +26,7 @@ from tideleg.plan import Plan, load_plan
 from tideleg.reaching import reach_of
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
-from tideleg.verdict import cautions_of, verdict_sentence, warnings_of
+from tideleg.verdict import cautions_of, dew_warnings, verdict_sentence, warnings_of
 from tideleg.worst import worst_instant
 from tideleg.year import year_of
 
@@ -171,6 +171,7 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
     holds = all(check.holds for check in checks) and not unchecked
     results = tuple(r.result for r in runs.values())
     warnings = warnings_of(stage, battery, [(name, r.demand) for name, r in runs.items()], thermal, results)
+    warnings += dew_warnings(plan, {name: r.demand for name, r in runs.items()}, stage)
     cautions = cautions_of(stage, [(name, r.demand, r.blocks) for name, r in runs.items()])
     return Outcome(
         title=plan.title,

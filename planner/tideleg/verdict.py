@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 
 import numpy as np
 
 from tideleg.battery import Battery
+from tideleg.dew import HIGHEST_DEGC, LOWEST_DEGC, dew_point
 from tideleg.limits import LimitCheck
 from tideleg.march import Demand, Settled
 from tideleg.outcome import MissionResult, ThermalEntry
+from tideleg.plan import Plan
 from tideleg.stage import Stage
 
 
@@ -86,6 +88,39 @@ def warnings_of(
                     f"{name}: steps of up to {longest:g} s are longer than the shortest thermal time constant"
                     f" ({shortest:.2g} s); temperature peaks inside a step are not seen"
                 )
+    return tuple(found)
+
+
+def dew_warnings(plan: Plan, demands: Mapping[str, Demand], stage: Stage) -> tuple[str, ...]:
+    """Return one sentence for each mission whose coolant is at times colder than the dew point of the air around it.
+
+    The plate is nowhere colder than the coolant at its inlet; where that stays above the dew point nothing is said.
+
+    Raises
+    ------
+    PlanError
+        If a humidity is given without what it needs, or for air at which the form for the dew point does not hold.
+    """
+    found = []
+    for index, (mission, (name, demand)) in enumerate(zip(plan.mission, demands.items(), strict=True)):
+        if mission.humidity is None:
+            continue
+        key = f"mission.{index}.humidity"
+        if mission.ambient is None or stage.modes is None or "coolant" not in stage.modes.boundaries:
+            what = "the dew point needs ambient, the temperature of the air, and parts that a coolant cools"
+            raise plan.fault(key, what)
+        if not LOWEST_DEGC <= mission.ambient <= HIGHEST_DEGC:
+            known = f"{LOWEST_DEGC:g} to {HIGHEST_DEGC:g} degC"
+            raise plan.fault(key, f"air of {mission.ambient:g} degC: the dew point is known from {known}")
+        dew = float(dew_point(mission.ambient, mission.humidity))
+        coolant = demand.boundary[stage.modes.boundaries.index("coolant")]
+        below = coolant < dew
+        if np.any(below):
+            share = float(demand.duration[below].sum() / demand.duration.sum())
+            found.append(
+                f"{name}: the coolant is below the dew point of {dew:.1f} degC for {quantity_text(share, 'share')} of"
+                f" the time (coldest {float(coolant.min()):.4g} degC): water may condense on the plate"
+            )
     return tuple(found)
 
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Any, Literal, NamedTuple, Self
 
 from pydantic import BaseModel, ConfigDict, Field, model_validator
 
@@ -23,12 +23,14 @@ class PlateSettings(BaseModel):
     """Keys of [cooling].
 
     plate_resistance runs from the plate to the coolant where `reference` says: at its inlet, its mean or its outlet
-    temperature. Without flow data the coolant keeps its inlet temperature.
+    temperature. Without flow data the coolant keeps its inlet temperature. resistance_factor multiplies it: fouling of
+    the coolant side, or thin air at altitude, as the user's own figure.
     """
 
     model_config = ConfigDict(extra="forbid")
 
     plate_resistance: Annotated[quantity.ThermalResistance, Field(gt=0.0)] | None = None
+    resistance_factor: float = Field(default=1.0, ge=1.0, le=100.0)
     plate_heat_capacity: Annotated[quantity.HeatCapacity, Field(ge=0.0)] = 0.0
     reference: Literal["inlet", "mean", "outlet"] = "mean"
     coolant_flow: Annotated[quantity.Flow, Field(gt=0.0)] | None = None
@@ -59,22 +61,40 @@ Cell = tuple[Annotated[quantity.ThermalResistance, Field(gt=0.0)], Annotated[qua
 """One Foster cell: resistance [K/W] and time constant [s]; zero follows at once."""
 
 
+Rung = tuple[Annotated[quantity.ThermalResistance, Field(gt=0.0)], Annotated[quantity.HeatCapacity, Field(gt=0.0)]]
+"""One place of a Cauer ladder: resistance to the next place [K/W] and heat capacity [J/K]."""
+
+
 class SwitchSeat(BaseModel):
-    """Keys of [stage.switch] and its diode: Foster cells of ONE chip from junction to plate, an interface in series."""
+    """Keys of [stage.switch] and its diode, of ONE chip from junction to plate, and an interface in series.
+
+    junction_to_plate : Foster cells (resistance, time constant), as a curve of Zth is fitted; their inner nodes are no
+        places, so all heat of the chip reaches the plate at once
+    junction_to_plate_ladder : Cauer places (resistance to the next, heat capacity) from the junction on; heat passes
+        from place to place and reaches the plate later
+    """
 
     model_config = ConfigDict(extra="forbid")
 
     junction_to_plate: Annotated[tuple[Cell, ...], Field(min_length=1)] | None = None
+    junction_to_plate_ladder: Annotated[tuple[Rung, ...], Field(min_length=1)] | None = None
     interface_resistance: Annotated[quantity.ThermalResistance, Field(ge=0.0)] | None = None
 
     @model_validator(mode="after")
     def _interface_has_a_chain(self) -> Self:
-        if self.interface_resistance is not None and self.junction_to_plate is None:
+        if self.junction_to_plate is not None and self.junction_to_plate_ladder is not None:
+            raise ValueError(
+                "junction_to_plate and junction_to_plate_ladder say the same in two ways; give one of them"
+            )
+        if self.interface_resistance is not None and self._chain() is None:
             raise ValueError(
                 "interface_resistance stands alone: it is in series with junction_to_plate; give that too,"
                 " such as junction_to_plate = [['0.12 K/W', '20 ms']]"
             )
         return self
+
+    def _chain(self) -> object:
+        return self.junction_to_plate if self.junction_to_plate is not None else self.junction_to_plate_ladder
 
 
 class InductorSeat(BaseModel):
@@ -103,6 +123,14 @@ class CapacitorSeat(InductorSeat):
     cooled_by: Literal["plate", "ambient"] = "ambient"
 
 
+_PART_SETTINGS: dict[PartKind, type[BaseModel]] = {
+    "switch": SwitchSeat,
+    "diode": SwitchSeat,
+    "inductor": InductorSeat,
+    "capacitor": CapacitorSeat,
+}
+
+
 @dataclass(frozen=True)
 class Plate:
     """The model."""
@@ -110,14 +138,7 @@ class Plate:
     name: str = "plate"
     source: str = "chains on a shared plate: series and sum of heat; coolant rise P/(rho cp q): energy balance"
     settings: type[BaseModel] = PlateSettings
-    part_settings: Mapping[PartKind, type[BaseModel]] = field(
-        default_factory=lambda: {
-            "switch": SwitchSeat,
-            "diode": SwitchSeat,
-            "inductor": InductorSeat,
-            "capacitor": CapacitorSeat,
-        }
-    )
+    part_settings: Mapping[PartKind, type[BaseModel]] = field(default_factory=lambda: dict(_PART_SETTINGS))
 
     def without_coolant(self, settings: PlateSettings) -> PlateSettings | None:
         """Return the plate with its coolant standing still: only its own heat capacity takes heat."""
@@ -127,8 +148,11 @@ class Plate:
 
     def network(self, settings: PlateSettings, parts: Sequence[CooledPart]) -> Network:
         """Return the network of all parts that have thermal data."""
-        seats = [seat for seat in (_seat(part) for part in parts) if seat is not None]
-        on_plate = [seat.part for seat in seats if seat.base == "plate"]
+        stands = [stand for stand in (_stand(part) for part in parts) if stand is not None]
+        seats = [stand.seat for stand in stands]
+        ladders = tuple(mass for stand in stands for mass in stand.masses)
+        rungs = tuple(path for stand in stands for path in stand.paths)
+        on_plate = [seat.part for seat in seats if seat.base != "ambient"]
         boundaries = ["coolant"] if on_plate else []
         if any(seat.base == "ambient" for seat in seats):
             boundaries.append("ambient")
@@ -141,18 +165,50 @@ class Plate:
             )
         rise = REFERENCE_SHARE[settings.reference] * settings.coolant_rise_per_watt()
         plate = Mass("plate", settings.plate_heat_capacity)
+        to_coolant = settings.plate_resistance * settings.resistance_factor
         if rise == 0.0:
-            return Network(
-                tuple(boundaries), (plate,), (Path("plate", "coolant", settings.plate_resistance),), tuple(seats)
-            )
+            paths = (Path("plate", "coolant", to_coolant), *rungs)
+            return Network(tuple(boundaries), (plate, *ladders), paths, tuple(seats))
         # The coolant holds no heat of its own here: its local temperature is a joint behind the rise.
         local = Mass("coolant_at_plate", 0.0)
-        paths = (Path("plate", local.name, settings.plate_resistance), Path(local.name, "coolant", rise))
-        return Network(tuple(boundaries), (plate, local), paths, tuple(seats))
+        paths = (Path("plate", local.name, to_coolant), Path(local.name, "coolant", rise), *rungs)
+        return Network(tuple(boundaries), (plate, local, *ladders), paths, tuple(seats))
 
 
 LOST_RESISTANCE = 1e6
 """Of a plate whose coolant stands still: far above every other way, and finite, so that the network stays one [K/W]."""
+
+
+class _Stand(NamedTuple):
+    """Where a part's heat goes in, and the places of its own between there and the plate."""
+
+    seat: Seat
+    masses: tuple[Mass, ...] = ()
+    paths: tuple[Path, ...] = ()
+
+
+def _stand(part: CooledPart) -> _Stand | None:
+    keys: Any = part.settings
+    ladder = getattr(keys, "junction_to_plate_ladder", None)
+    if ladder is not None:
+        return _on_ladder(part, ladder, float(keys.interface_resistance or 0.0))
+    seat = _seat(part)
+    return None if seat is None else _Stand(seat)
+
+
+def _on_ladder(part: CooledPart, ladder: Sequence[tuple[float, float]], interface: float) -> _Stand:
+    """Return the ladder of all equal chips as one: they are alike, so places of one height share a temperature.
+
+    Heat capacities add and resistances divide by the number of chips; the interface lies in series with the last one.
+    """
+    names = [f"{part.name} place {i}" for i in range(1, len(ladder) + 1)]
+    masses, paths = [], []
+    for i, (resistance, capacity) in enumerate(ladder):
+        last = i + 1 == len(ladder)
+        masses.append(Mass(names[i], capacity * part.copies))
+        ohms = (resistance + interface if last else resistance) / part.copies
+        paths.append(Path(names[i], "plate" if last else names[i + 1], ohms))
+    return _Stand(Seat(part.name, names[0], (), part.copies), tuple(masses), tuple(paths))
 
 
 def _seat(part: CooledPart) -> Seat | None:

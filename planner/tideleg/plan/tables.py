@@ -294,6 +294,7 @@ class MissionTable(Table):
     coolant: q.Temperature | None = None
     ambient: q.Temperature | None = None
     battery_temperature: q.Temperature | None = None
+    humidity: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
     start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
     start_soc: Annotated[q.Share, Field(ge=0.0, le=1.0)] | None = None
 

@@ -6,7 +6,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from pydantic import ValidationError
 
-from tideleg import CooledPart, CoolingModel, InputError
+from tideleg import CooledPart, CoolingModel, InputError, Mass, Network, Path, Seat
 from tideleg.heat import Propagator, modes
 from tideleg_cooling.plate import cooling_model
 
@@ -156,3 +156,56 @@ def test_keys_of_the_plate_that_cannot_be_are_refused(keys, said):
 def test_keys_of_parts_that_cannot_be_are_refused(kind, keys, said):
     with pytest.raises(ValidationError, match=said):
         cooling_model().part_settings[kind].model_validate(keys)
+
+
+LADDER = {"junction_to_plate_ladder": [["0.05 K/W", "0.2 J/K"], ["0.15 K/W", "2 J/K"]]}
+
+
+@pytest.mark.parametrize("chips", [1, 6])
+def test_a_ladder_on_the_plate_is_the_chips_one_by_one(chips):
+    """Chips written out as separate masses and paths against the lumped ladder: same junction, same plate."""
+    keys = {"plate_resistance": 0.03, "plate_heat_capacity": 400.0}
+    lumped = modes(network(keys, part("die", "switch", {**LADDER, "interface_resistance": "0.02 K/W"}, chips)))
+    masses, paths, seats = [Mass("plate", 400.0)], [Path("plate", "coolant", 0.03)], []
+    for k in range(chips):
+        masses += [Mass(f"a{k}", 0.2), Mass(f"b{k}", 2.0)]
+        paths += [Path(f"a{k}", f"b{k}", 0.05), Path(f"b{k}", "plate", 0.17)]
+        seats.append(Seat(f"die{k}", f"a{k}"))
+    apart = modes(Network(("coolant",), tuple(masses), tuple(paths), tuple(seats)))
+    seconds = np.array([0.01, 0.05, 0.2, 1.0, 5.0, 60.0])
+    power = np.linspace(50.0, 120.0, 6)
+    boundary = np.full((1, 6), 40.0)
+    one = Propagator(lumped, seconds).respond(lumped.soaked(boundary[:, 0])[:, None], power[None, None], boundary)
+    all_power = np.broadcast_to(power, (chips, 1, 6))
+    many = Propagator(apart, seconds).respond(apart.soaked(boundary[:, 0])[:, None], all_power, boundary)
+    np.testing.assert_allclose(one.end[0], many.end[0], rtol=1e-9)
+    np.testing.assert_allclose(one.mean[0], many.mean[0], rtol=1e-9)
+
+
+def test_a_ladder_and_its_foster_chain_agree_on_a_cold_wall_only():
+    # Trap: a Foster chain joined to a plate gives all heat at once; a ladder of the same Zth gives it later.
+    from tideleg.heat import cauer_to_foster
+
+    cells = [[r, tau] for r, tau in cauer_to_foster([(0.05, 0.2), (0.15, 2.0)])]
+    stiff = {"plate_resistance": 1e-9, "plate_heat_capacity": 1e9}
+    soft = {"plate_resistance": 0.5, "plate_heat_capacity": 2.0}
+    seconds, boundary = np.full(8, 0.05), np.full((1, 8), 40.0)
+    for keys, alike in ((stiff, True), (soft, False)):
+        ends = []
+        for die in (LADDER, {"junction_to_plate": cells}):
+            solved = modes(network(keys, part("die", "switch", die)))
+            start = solved.soaked(boundary[:, 0])[:, None]
+            ends.append(Propagator(solved, seconds).respond(start, np.full((1, 1, 8), 100.0), boundary).end[0, 0])
+        assert np.allclose(ends[0], ends[1], rtol=1e-6) == alike
+
+
+def test_fouling_multiplies_the_way_to_the_coolant_only():
+    die = part("die", "switch", SWITCH)
+    clean = warming({"plate_resistance": 0.02} | FLOW, die)
+    fouled = warming({"plate_resistance": 0.02, "resistance_factor": 1.4} | FLOW, die)
+    assert fouled[0, 0] - clean[0, 0] == pytest.approx(0.4 * 0.02)
+
+
+def test_one_way_to_the_plate_is_enough():
+    with pytest.raises(ValidationError, match="in two ways"):
+        part("die", "switch", {**SWITCH, **LADDER})
