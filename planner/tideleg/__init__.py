@@ -36,6 +36,7 @@ from tideleg.contract import (
 )
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
+from tideleg.stress import Consumption, Cycles, LifeModel, LifeTerm, Stress, WornKind
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
 if TYPE_CHECKING:
@@ -75,12 +76,16 @@ __all__ = [
     "CONTINUOUS",
     "DISCONTINUOUS",
     "IDLE",
+    "Consumption",
     "CooledPart",
     "CoolingModel",
+    "Cycles",
     "Exchange",
     "FloatArray",
     "Flow",
     "InputError",
+    "LifeModel",
+    "LifeTerm",
     "Line",
     "LossModel",
     "LossTerm",
@@ -100,12 +105,14 @@ __all__ = [
     "Seat",
     "Segment",
     "Slot",
+    "Stress",
     "TidelegError",
     "Timing",
     "Topology",
     "Values",
     "Waveform",
     "Winding",
+    "WornKind",
     "compare",
     "hookimpl",
     "load_plan",

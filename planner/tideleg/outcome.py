@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -10,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 from tideleg.caution import Safety
 from tideleg.limits import LimitCheck
+from tideleg.worn import NO_WEAR, Wear
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -180,6 +182,8 @@ class Change:
     used : share of that limit in use [-]; None where there is no answer
     greatest_junction_degc : None where no junction is modelled or there is no answer
     efficiency : [-]; None where there is no answer
+    damage : of the part that wears most in the unchanged plan, over its damage there [-]; None where no life is
+        modelled or there is no answer
     """
 
     what: str
@@ -188,6 +192,7 @@ class Change:
     used: float | None
     greatest_junction_degc: float | None
     efficiency: float | None
+    damage: float | None = None
 
 
 @dataclass(frozen=True)
@@ -197,11 +202,13 @@ class Coarser:
     merged : how many steps became one
     mean_square_change : of the battery current, over its own value [-]
     greatest_junction_change_k : None where no junction is modelled
+    damage_change : of the part that wears most, over its own value [-]; None where no life is modelled
     """
 
     merged: int
     mean_square_change: float
     greatest_junction_change_k: float | None
+    damage_change: float | None = None
 
 
 @dataclass(frozen=True)
@@ -222,6 +229,7 @@ class Outcome:
     binding : the limit with the greatest share in use, or None where the plan states none
     stage_facts : label -> value, the stage at a glance
     rules : sentences that every output echoes (signs, holding, terminals)
+    wear : cycles, damage and life of parts
     """
 
     title: str
@@ -242,6 +250,7 @@ class Outcome:
     inputs: Inputs
     plan_file: Path | None = None
     coarser: tuple[Coarser, ...] = ()
+    wear: Wear = NO_WEAR
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -271,6 +280,15 @@ class Outcome:
                 totals[entry.mechanism] = totals.get(entry.mechanism, 0.0) + share
         return dict(sorted(totals.items(), key=lambda item: -item[1]))
 
+    def _wear_summary(self) -> dict[str, Any]:
+        """Return wear for summary.json: cycles and curves for the pictures are left out; an endless life is null."""
+        return {
+            "residue": self.wear.residue,
+            "heat": {entry.part: _plain(entry) for entry in self.wear.heat},
+            "parts": [_plain(part, leave_out=("cycles", "along")) for part in self.wear.parts],
+            "consumers": [_plain(one) for one in self.wear.consumers],
+        }
+
     def summary(self) -> dict[str, Any]:
         """Return the content of summary.json: plain lists, mappings, numbers and strings."""
         return {
@@ -284,7 +302,7 @@ class Outcome:
             "efficiency": _number(self.efficiency),
             "worst": _plain(self.worst, leave_out=("traces",)),
             "thermal": {entry.part: _plain(entry) for entry in self.thermal},
-            "wear": {},
+            "wear": self._wear_summary(),
             "battery": {m.name: _plain(m.battery) for m in self.missions},
             "resolution": [_plain(one) for one in self.coarser],
             "changes": [_plain(change) for change in self.changes],
@@ -306,8 +324,8 @@ class Outcome:
 
 
 def _number(value: float) -> float | None:
-    """JSON knows no nan: an undefined number is null."""
-    return value if value == value else None  # noqa: PLR0124  (nan is the only number unlike itself)
+    """JSON knows no nan and no infinity: an undefined or endless number is null."""
+    return value if math.isfinite(value) else None
 
 
 def _plain(thing: Any, leave_out: tuple[str, ...] = ()) -> Any:
@@ -317,6 +335,8 @@ def _plain(thing: Any, leave_out: tuple[str, ...] = ()) -> Any:
         return {name: _plain(getattr(thing, name)) for name in names}
     if isinstance(thing, Mapping):
         return {str(key): _plain(value) for key, value in thing.items()}
+    if isinstance(thing, tuple) and hasattr(thing, "_asdict"):
+        return {name: _plain(value) for name, value in thing._asdict().items()}
     if isinstance(thing, (list, tuple)):
         return [_plain(value) for value in thing]
     if hasattr(thing, "item"):

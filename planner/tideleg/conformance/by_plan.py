@@ -9,6 +9,7 @@ from pydantic import BaseModel, ValidationError
 
 from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
+from tideleg.conformance.life import life_checks
 from tideleg.conformance.losses import loss_checks
 from tideleg.conformance.topologies import topology_checks
 from tideleg.contract import CoolingModel, LossModel, PartKind, Topology
@@ -16,6 +17,7 @@ from tideleg.errors import InputError
 from tideleg.plan import Plan
 from tideleg.quantity import parse
 from tideleg.registry import Plugin, Registry
+from tideleg.stress import LifeModel
 
 TABLES: dict[PartKind, tuple[str, ...]] = {
     "switch": ("switch",),
@@ -48,6 +50,8 @@ def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
         yield from _topology(offer, plan)
     elif plugin.kind == "loss":
         yield from _loss(offer, plan)
+    elif plugin.kind == "life":
+        yield from _life(offer, plan)
     else:
         yield from _cooling(offer, plan)
 
@@ -83,6 +87,18 @@ def _loss(model: LossModel, plan: Plan) -> Iterator[Check]:
     for table in TABLES[model.reads]:
         settings = settings or _own(plan.stage.parts.get(table, {}), model.settings)
     yield from loss_checks(model, settings)
+
+
+def _life(model: LifeModel, plan: Plan) -> Iterator[Check]:
+    tables = () if plan.life is None else plan.life.parts
+    given = [table.settings for table in tables if table.model == model.name]
+    if not given:
+        raise InputError(
+            f"no [life.<part>] of the plan has model = {model.name!r}, so there are no data to check it with; give"
+            " --plan a plan that has"
+        )
+    for settings in given:
+        yield from life_checks(model, settings)
 
 
 def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:

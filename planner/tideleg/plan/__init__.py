@@ -8,6 +8,7 @@ from tideleg.plan.tables import (
     CapacitorBase,
     CoolingTable,
     InductorBase,
+    LifeTable,
     LimitsTable,
     LinkTable,
     LossesTable,
@@ -17,6 +18,7 @@ from tideleg.plan.tables import (
     StageTable,
     SwitchBase,
     VehicleTable,
+    WornTable,
 )
 from tideleg.plan.writing import format_quantity, write_plan
 
@@ -26,6 +28,7 @@ __all__ = [
     "CoolingTable",
     "Curve",
     "InductorBase",
+    "LifeTable",
     "LimitsTable",
     "LinkTable",
     "LossesTable",
@@ -35,6 +38,7 @@ __all__ = [
     "StageTable",
     "SwitchBase",
     "VehicleTable",
+    "WornTable",
     "format_quantity",
     "load_plan",
     "plan_from_mapping",
