@@ -42,6 +42,7 @@ from tideleg.contract import (
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
 from tideleg.points import PointReader, PointTable
+from tideleg.stress import Consumption, Cycles, LifeModel, LifeTerm, Stress, WornKind
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
 if TYPE_CHECKING:
@@ -87,12 +88,16 @@ __all__ = [
     "IDLE",
     "Choice",
     "Chooser",
+    "Consumption",
     "CooledPart",
     "CoolingModel",
+    "Cycles",
     "Exchange",
     "FloatArray",
     "Flow",
     "InputError",
+    "LifeModel",
+    "LifeTerm",
     "Line",
     "LossModel",
     "LossTerm",
@@ -117,12 +122,14 @@ __all__ = [
     "Segment",
     "Slot",
     "Starter",
+    "Stress",
     "TidelegError",
     "Timing",
     "Topology",
     "Values",
     "Waveform",
     "Winding",
+    "WornKind",
     "compare",
     "derate",
     "hookimpl",

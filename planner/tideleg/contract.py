@@ -1,4 +1,4 @@
-"""What a plugin is: the shapes that pass between the core and topologies, losses and cooling.
+"""What a plugin is: the shapes that pass between the core and topologies, losses, cooling and (see `stress`) life.
 
 A topology only states waveforms; a loss model only reads them; a cooling model only describes a network. So any loss
 works with any topology, and the core knows none of them.
@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 from pydantic import BaseModel
 
 from tideleg.network import Network
+from tideleg.stress import LifeModel
 from tideleg.waveform import NEGLIGIBLE_WIDTH, FloatArray, Values, Waveform
 
 PROJECT = "tideleg"
@@ -460,3 +461,7 @@ class Hooks:
     @hookspec
     def cooling_model(self) -> CoolingModel:  # type: ignore[empty-body]
         """Offer one cooling model; called once when plugins are first listed; return at once."""
+
+    @hookspec
+    def life_model(self) -> LifeModel:  # type: ignore[empty-body]
+        """Offer one life model; called once when plugins are first listed; return at once."""

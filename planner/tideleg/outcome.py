@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -10,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 from tideleg.caution import Safety
 from tideleg.limits import LimitCheck
+from tideleg.worn import NO_WEAR, Wear
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -271,6 +273,8 @@ class Change:
     used : share of that limit in use [-]; None where there is no answer
     greatest_junction_degc : None where no junction is modelled or there is no answer
     efficiency : [-]; None where there is no answer
+    damage : of the part that wears most in the unchanged plan, over its damage there [-]; None where no life is
+        modelled or there is no answer
     """
 
     what: str
@@ -279,6 +283,7 @@ class Change:
     used: float | None
     greatest_junction_degc: float | None
     efficiency: float | None
+    damage: float | None = None
 
 
 @dataclass(frozen=True)
@@ -288,11 +293,13 @@ class Coarser:
     merged : how many steps became one
     mean_square_change : of the battery current, over its own value [-]
     greatest_junction_change_k : None where no junction is modelled
+    damage_change : of the part that wears most, over its own value [-]; None where no life is modelled
     """
 
     merged: int
     mean_square_change: float
     greatest_junction_change_k: float | None
+    damage_change: float | None = None
 
 
 @dataclass(frozen=True)
@@ -360,6 +367,7 @@ class Outcome:
     rules : sentences that every output echoes (signs, holding, terminals)
     grades : what the graded numbers of parts are worth and what rests on them
     placeholders : one sentence for each part that is invented
+    wear : cycles, damage and life of parts
     """
 
     title: str
@@ -385,6 +393,7 @@ class Outcome:
     year: Year | None = None
     grades: tuple[GradeEntry, ...] = ()
     placeholders: tuple[str, ...] = ()
+    wear: Wear = NO_WEAR
 
     @property
     def steps(self) -> pd.DataFrame:
@@ -414,6 +423,15 @@ class Outcome:
                 totals[entry.mechanism] = totals.get(entry.mechanism, 0.0) + share
         return dict(sorted(totals.items(), key=lambda item: -item[1]))
 
+    def _wear_summary(self) -> dict[str, Any]:
+        """Return wear for summary.json: cycles and curves for the pictures are left out; an endless life is null."""
+        return {
+            "residue": self.wear.residue,
+            "heat": {entry.part: _plain(entry) for entry in self.wear.heat},
+            "parts": [_plain(part, leave_out=("cycles", "along")) for part in self.wear.parts],
+            "consumers": [_plain(one) for one in self.wear.consumers],
+        }
+
     def summary(self) -> dict[str, Any]:
         """Return the content of summary.json: plain lists, mappings, numbers and strings."""
         return {
@@ -430,7 +448,7 @@ class Outcome:
             "outside_tables": {m.name: [_plain(entry) for entry in m.outside] for m in self.missions},
             "grades": [_plain(entry) for entry in self.grades],
             "placeholders": list(self.placeholders),
-            "wear": {},
+            "wear": self._wear_summary(),
             "battery": {m.name: _plain(m.battery) for m in self.missions},
             "year": _plain(self.year),
             "coolant_loss": _plain(self.coolant_loss),
@@ -456,8 +474,8 @@ class Outcome:
 
 
 def _number(value: float) -> float | None:
-    """JSON knows no nan: an undefined number is null."""
-    return value if value == value else None  # noqa: PLR0124  (nan is the only number unlike itself)
+    """JSON knows no nan and no infinity: an undefined or endless number is null."""
+    return value if math.isfinite(value) else None
 
 
 def _plain(thing: Any, leave_out: tuple[str, ...] = ()) -> Any:
@@ -467,6 +485,8 @@ def _plain(thing: Any, leave_out: tuple[str, ...] = ()) -> Any:
         return {name: _plain(getattr(thing, name)) for name in names}
     if isinstance(thing, Mapping):
         return {str(key): _plain(value) for key, value in thing.items()}
+    if isinstance(thing, tuple) and hasattr(thing, "_asdict"):
+        return {name: _plain(value) for name, value in thing._asdict().items()}
     if isinstance(thing, (list, tuple)):
         return [_plain(value) for value in thing]
     if hasattr(thing, "item"):

@@ -17,11 +17,17 @@ import pluggy
 
 from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, Topology
 from tideleg.errors import PluginError
+from tideleg.stress import LifeModel
 
-KINDS: dict[str, type] = {"topology": Topology, "loss_model": LossModel, "cooling_model": CoolingModel}
+KINDS: dict[str, type] = {
+    "topology": Topology,
+    "loss_model": LossModel,
+    "cooling_model": CoolingModel,
+    "life_model": LifeModel,
+}
 """Hook name -> what it must offer."""
 
-KIND_WORDS = {"topology": "topology", "loss_model": "loss", "cooling_model": "cooling"}
+KIND_WORDS = {"topology": "topology", "loss_model": "loss", "cooling_model": "cooling", "life_model": "life"}
 
 Offer = TypeVar("Offer")
 
@@ -30,7 +36,7 @@ class Plugin(NamedTuple):
     """One thing that a plugin offers.
 
     name : its own name, unique within its kind
-    kind : "topology", "loss" or "cooling"
+    kind : "topology", "loss", "cooling" or "life"
     offer : the object itself
     module, distribution, version : where it came from
     """
@@ -79,6 +85,15 @@ class Registry:
         """Return the cooling model of that name; raises PluginError as `topology` does."""
         found: CoolingModel = self._named("cooling", name)
         return found
+
+    def life(self, name: str) -> LifeModel:
+        """Return the life model of that name; raises PluginError as `topology` does."""
+        found: LifeModel = self._named("life", name)
+        return found
+
+    def life_models(self) -> tuple[LifeModel, ...]:
+        """Return every life model, by name."""
+        return tuple(p.offer for p in self.plugins if p.kind == "life")
 
     def topologies(self) -> tuple[Topology, ...]:
         """Return every topology, by name."""

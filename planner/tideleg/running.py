@@ -27,6 +27,16 @@ from tideleg.reaching import reach_of
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
 from tideleg.verdict import cautions_of, dew_warnings, verdict_sentence, warnings_of
+from tideleg.wearing import (
+    Pass,
+    Worn,
+    bind_life,
+    life_checks_of,
+    start_temperatures,
+    wear_of,
+    wear_warnings,
+    without_life,
+)
 from tideleg.worst import worst_instant
 from tideleg.year import year_of
 
@@ -47,10 +57,6 @@ RULES = (
     "parts that repeat are given for one; their number stands in the list of parts",
     "limits are design targets of the plan, not a statement of compliance with any standard",
 )
-
-
-NEVER_MODELLED = ("wear and life of parts: no life model in this release",)
-"""Mechanisms that no data can bring into this release; page one says so every time."""
 
 
 class MissionRun(NamedTuple):
@@ -95,8 +101,9 @@ def run(
         plan = load_plan(plan)
     stage = build_stage(plan, registry)
     _refuse_twin_missions(plan)
+    worn = bind_life(plan, stage)
     runs = [_run_mission(plan, index, stage, merged_steps, progress) for index in range(len(plan.mission))]
-    return _outcome(plan, stage, battery_of(plan), {r.result.name: r for r in runs})
+    return _outcome(plan, stage, battery_of(plan), worn, {r.result.name: r for r in runs})
 
 
 def _refuse_twin_missions(plan: Plan) -> None:
@@ -160,11 +167,15 @@ def _march_from(
     )
 
 
-def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, MissionRun]) -> Outcome:
+def _outcome(
+    plan: Plan, stage: Stage, battery: Battery, worn: tuple[Worn, ...], runs: Mapping[str, MissionRun]
+) -> Outcome:
     """Hold the runs against the limits and put everything on one table."""
     steps = {name: r.steps for name, r in runs.items()}
+    wear = wear_of(plan, stage, worn, _passes(plan, stage, battery, runs))
     checks = check_limits(plan.limits, stage, plan.link.trip_voltage, _seen(stage, runs))
     unchecked = unchecked_limits(plan.limits, checks)
+    checks = tuple(sorted((*checks, *life_checks_of(wear)), key=lambda check: -check.used))
     binding = checks[0] if checks else None
     gains = {name: np.max([b.gain[:, 0].max(axis=-1) for b in r.blocks], axis=0) for name, r in runs.items()}
     thermal = thermal_entries(stage, {name: r.demand for name, r in runs.items()}, gains, steps)
@@ -187,10 +198,11 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
         worst=worst_instant(stage, checks, steps, {name: r.blocks for name, r in runs.items()}),
         changes=(),
         safety=_safety(plan, stage, battery, steps),
-        not_modelled=stage.not_modelled + unchecked + NEVER_MODELLED,
+        not_modelled=stage.not_modelled + unchecked + without_life(stage, worn),
         warnings=(
             *warnings,
             *cautions,
+            *wear_warnings(wear, plan.life),
             *(line for name, r in runs.items() for line in outside_warnings(name, r.result.outside)),
         ),
         rules=(*RULES, *getattr(stage.topology, "assumptions", ())),
@@ -200,7 +212,17 @@ def _outcome(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, Miss
             plan, stage, [Marched(r.result.passes_per_year, r.demand, r.blocks) for r in runs.values()]
         ),
         placeholders=placeholder_words(plan),
+        wear=wear,
     )
+
+
+def _passes(plan: Plan, stage: Stage, battery: Battery, runs: Mapping[str, MissionRun]) -> dict[str, Pass]:
+    """Return the runs as the wear of parts sees them."""
+    found = {}
+    for table, (name, r) in zip(plan.mission, runs.items(), strict=True):
+        warm = start_temperatures(stage, battery, r.demand, table.start, r.steps)
+        found[name] = Pass(table.passes_per_year, r.demand, r.steps, warm)
+    return found
 
 
 def _seen(stage: Stage, runs: Mapping[str, MissionRun]) -> Seen:

@@ -18,7 +18,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     check.add_argument("--plan", type=Path, metavar="PLAN", help="plan whose data it is given; default: a shipped one")
     check.set_defaults(act=_check)
     new = acts.add_parser("new", help="write a small plugin project with its test")
-    new.add_argument("kind", metavar="KIND", help="topology, loss or cooling")
+    new.add_argument("kind", metavar="KIND", help="topology, loss, cooling or life")
     new.add_argument("name", metavar="NAME", help="lower-case words joined by hyphens")
     new.add_argument("folder", type=Path, metavar="DIR", help="new folder")
     new.set_defaults(act=_new)

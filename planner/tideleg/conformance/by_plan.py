@@ -10,6 +10,7 @@ from pydantic import BaseModel, ValidationError
 
 from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
+from tideleg.conformance.life import life_checks
 from tideleg.conformance.losses import loss_checks
 from tideleg.conformance.topologies import topology_checks
 from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
@@ -19,6 +20,7 @@ from tideleg.plan.generic import GENERIC
 from tideleg.quantity import parse
 from tideleg.registry import Plugin, Registry
 from tideleg.scenario import scenarios_folder
+from tideleg.stress import LifeModel
 
 GREATEST_CURRENT = 300.0
 """Battery current either way up to which a topology is asked [A]."""
@@ -56,6 +58,8 @@ def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
         yield from _topology(offer, plan)
     elif plugin.kind == "loss":
         yield from _loss(offer, plan)
+    elif plugin.kind == "life":
+        yield from _life(offer, plan)
     else:
         yield from _cooling(offer, plan)
 
@@ -117,6 +121,18 @@ def shipped_plan(name: str, registry: Registry) -> Plan:
     data = tomllib.loads(file.read_text(encoding="utf-8"))
     data["stage"]["switch"] = {"part": f"{GENERIC}igbt-1700v"}
     return plan_from_mapping(data, folder=file.parent)
+
+
+def _life(model: LifeModel, plan: Plan) -> Iterator[Check]:
+    tables = () if plan.life is None else plan.life.parts
+    given = [table.settings for table in tables if table.model == model.name]
+    if not given:
+        raise InputError(
+            f"no [life.<part>] of the plan has model = {model.name!r}, so there are no data to check it with; give"
+            " --plan a plan that has"
+        )
+    for settings in given:
+        yield from life_checks(model, settings)
 
 
 def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:

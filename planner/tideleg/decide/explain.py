@@ -40,7 +40,7 @@ def explained(
         except InputError as error:
             changes.append(Change(words, False, f"cannot operate: {error}", None, None, None))
             continue
-        changes.append(_change(words, other))
+        changes.append(_change(words, outcome, other))
     coarser = tuple(_coarser(plan, outcome, merged, registry, progress) for merged in MERGED)
     return dataclasses.replace(
         outcome,
@@ -64,7 +64,20 @@ def _coarser(
     before, after = _mean_square(outcome), _mean_square(other)
     hot, less_hot = _hottest_junction(outcome), _hottest_junction(other)
     moved = None if hot is None or less_hot is None else less_hot - hot
-    return Coarser(merged, 0.0 if before == 0.0 else after / before - 1.0, moved)
+    damage = _damage_ratio(outcome, other)
+    change = None if damage is None else damage - 1.0
+    return Coarser(merged, 0.0 if before == 0.0 else after / before - 1.0, moved, change)
+
+
+def _damage_ratio(outcome: Outcome, other: Outcome) -> float | None:
+    """Return the damage in another run of the part that wears most here, over its damage here [-]."""
+    worst = outcome.wear.worst
+    if worst is None or worst.damage_per_year <= 0.0:
+        return None
+    twins = [
+        p for p in other.wear.parts if (p.part, p.model, p.mechanism) == (worst.part, worst.model, worst.mechanism)
+    ]
+    return twins[0].damage_per_year / worst.damage_per_year if twins else None
 
 
 def _mean_square(outcome: Outcome) -> float:
@@ -86,6 +99,8 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     """Yield (words, changed plan) for every change worth asking about."""
     if any(mission.coolant is not None for mission in plan.mission):
         yield f"coolant {WARMER_K:g} K warmer", with_warmer_coolant(plan, WARMER_K)
+        if plan.life is not None and plan.life.parts:
+            yield f"coolant {WARMER_K:g} K cooler", with_warmer_coolant(plan, -WARMER_K)
     frequency = stage_number(plan, "switching_frequency", "frequency")
     if frequency is not None:
         yield "switching frequency 25 % higher", with_stage(plan, switching_frequency=1.25 * frequency)
@@ -98,7 +113,8 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
         yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)
 
 
-def _change(words: str, other: Outcome) -> Change:
+def _change(words: str, outcome: Outcome, other: Outcome) -> Change:
     binding = "" if other.binding is None else f"{other.binding.name} of {other.binding.part.replace('_', ' ')}"
     used = None if other.binding is None else other.binding.used
-    return Change(words, other.holds, binding, used, _hottest_junction(other), other.efficiency)
+    damage = _damage_ratio(outcome, other)
+    return Change(words, other.holds, binding, used, _hottest_junction(other), other.efficiency, damage)

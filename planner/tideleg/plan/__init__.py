@@ -10,6 +10,7 @@ from tideleg.plan.tables import (
     CoolingTable,
     DiodeBase,
     InductorBase,
+    LifeTable,
     LimitsTable,
     LinkTable,
     LossesTable,
@@ -20,6 +21,7 @@ from tideleg.plan.tables import (
     SwitchBase,
     TransformerBase,
     VehicleTable,
+    WornTable,
 )
 from tideleg.plan.writing import format_quantity, write_plan
 
@@ -31,6 +33,7 @@ __all__ = [
     "Curve",
     "DiodeBase",
     "InductorBase",
+    "LifeTable",
     "LimitsTable",
     "LinkTable",
     "LossesTable",
@@ -41,6 +44,7 @@ __all__ = [
     "SwitchBase",
     "TransformerBase",
     "VehicleTable",
+    "WornTable",
     "format_quantity",
     "load_plan",
     "part_schema",

@@ -50,6 +50,8 @@ def _plan(data: dict[str, Any], source: Source) -> Plan:
         cooling = shaped["cooling"]
         own = {key: value for key, value in cooling.items() if key != "model"}
         shaped["cooling"] = {"model": cooling.get("model", "plate"), "settings": own}
+    if isinstance(shaped.get("life"), dict):
+        shaped["life"] = _life(shaped["life"], source)
     try:
         plan = Plan.model_validate(shaped)
     except ValidationError as error:
@@ -135,6 +137,26 @@ def _stage(data: dict[str, Any], source: Source, files: list[Path]) -> dict[str,
         "part_files": notes.part_files,
     }
     return {"topology": data["topology"], **shaped} if "topology" in data else shaped
+
+
+def _life(data: dict[str, Any], source: Source) -> dict[str, Any]:
+    """Return [life] as its own keys and a list of the life models, part by part; a part may have several."""
+    own: dict[str, Any] = {}
+    parts: list[dict[str, Any]] = []
+    for key, value in data.items():
+        given = [value] if isinstance(value, dict) else value
+        if not (isinstance(given, list) and given and all(isinstance(one, dict) for one in given)):
+            own[key] = value
+            continue
+        for index, one in enumerate(given):
+            dotted_key = f"life.{key}" if isinstance(value, dict) else f"life.{key}.{index}"
+            if not isinstance(one.get("model"), str):
+                raise source.fault(f"{dotted_key}.model", "this key is missing; give the name of a life model")
+            settings = {name: inner for name, inner in one.items() if name != "model"}
+            parts.append({"part": key, "key": dotted_key, "model": one["model"], "settings": settings})
+    if "parts" in own:
+        raise source.fault("life.parts", unknown_key("parts", set(tables.LifeTable.model_fields) - {"parts"}))
+    return {**own, "parts": parts}
 
 
 def read_table(

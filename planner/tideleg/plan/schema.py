@@ -10,6 +10,7 @@ from pydantic import BaseModel
 from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
 from tideleg.plan.parts import GRADES
 from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase
+from tideleg.stress import LifeModel
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
     "switch": [SwitchBase],
@@ -29,7 +30,10 @@ _CURVE = {
 
 
 def plan_schema(
-    topologies: Sequence[Topology], loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+    topologies: Sequence[Topology],
+    loss_models: Sequence[LossModel],
+    cooling_models: Sequence[CoolingModel],
+    life_models: Sequence[LifeModel] = (),
 ) -> dict[str, Any]:
     """Return the JSON Schema (draft 2020-12) of a plan, with the keys of every plugin in its place."""
     schema = Plan.model_json_schema()
@@ -39,6 +43,8 @@ def plan_schema(
     definitions.pop("Curve", None)
     definitions["StageTable"] = _stage(topologies, loss_models, cooling_models)
     definitions["CoolingTable"] = _cooling(cooling_models)
+    definitions["LifeTable"] = _life(definitions["LifeTable"], life_models)
+    definitions.pop("WornTable", None)
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
 
 
@@ -108,6 +114,20 @@ def _cooling(cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
     for model in cooling_models:
         keys |= _properties(model.settings)
     return {"type": "object", "properties": keys, "additionalProperties": False}
+
+
+def _life(own: dict[str, Any], life_models: Sequence[LifeModel]) -> dict[str, Any]:
+    """Return [life] with a table, or several, for each part that wears."""
+    properties = {name: value for name, value in own["properties"].items() if name != "parts"}
+    tables = []
+    for model in life_models:
+        schema = model.settings.model_json_schema()
+        keys = {"model": {"const": model.name}, **_properties(model.settings)}
+        required = ["model", *schema.get("required", [])]
+        tables.append({"type": "object", "properties": keys, "required": required, "additionalProperties": False})
+    one: dict[str, Any] = {"anyOf": tables} if tables else {"type": "object"}
+    several = {"anyOf": [one, {"type": "array", "items": one, "minItems": 1}]}
+    return {"type": "object", "properties": properties, "additionalProperties": several}
 
 
 def _properties(model: type[BaseModel]) -> dict[str, Any]:

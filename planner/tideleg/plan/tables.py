@@ -171,6 +171,35 @@ class LimitsTable(Table):
     efficiency: Annotated[q.Share, Field(gt=0.0, lt=1.0)] | None = None
 
 
+class WornTable(Table):
+    """One [life.<part>]: the life model, and its keys as written; the plugin validates them.
+
+    key : dotted key of the table, for messages
+    """
+
+    part: str
+    key: str
+    model: str
+    settings: dict[str, Any] = {}
+
+
+class LifeTable(Table):
+    """[life]: what is asked of the life of parts, and the life models by part.
+
+    residue : what cycles that never close count for
+    target : life that must be reached, by all but a share `target_failures` of the stages
+    load_spread : standard deviation of ln(life) by how stages are used, alike for all parts of one stage [-]
+    hot_above : temperature above which hours are told apart
+    """
+
+    residue: Literal["half_cycles", "repeating", "closed_only"] = "repeating"
+    target: Annotated[q.Time, Positive] | None = None
+    target_failures: Annotated[q.Share, Field(gt=0.0, lt=1.0)] = 0.1
+    load_spread: float = Field(default=0.0, ge=0.0)
+    hot_above: q.Temperature | None = None
+    parts: tuple[WornTable, ...] = ()
+
+
 class VehicleTable(Table):
     """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2."""
 
@@ -316,6 +345,7 @@ class Plan(Table):
     cooling: CoolingTable | None = None
     losses: LossesTable = LossesTable()
     limits: LimitsTable = LimitsTable()
+    life: LifeTable | None = None
     vehicle: VehicleTable | None = None
     size: SizeTable | None = None
     year: YearTable = YearTable()

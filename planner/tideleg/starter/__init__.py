@@ -8,7 +8,7 @@ from pathlib import Path
 
 from tideleg.errors import InputError
 
-KINDS = ("topology", "loss", "cooling")
+KINDS = ("topology", "loss", "cooling", "life")
 _HERE = Path(__file__).resolve().parent
 
 
@@ -17,7 +17,7 @@ def new_plugin(kind: str, name: str, folder: Path) -> list[Path]:
 
     Parameters
     ----------
-    kind : "topology", "loss" or "cooling"
+    kind : "topology", "loss", "cooling" or "life"
     name : of the plugin, lower-case words joined by hyphens
     folder : new, or empty
 

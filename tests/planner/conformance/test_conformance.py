@@ -13,13 +13,44 @@ from tideleg.command import main
 from tideleg.conformance import loss_checks, topology_checks
 from tideleg.conformance.by_plan import plugin_checks, shipped_plan
 from tideleg.errors import InputError
-from tideleg.plan import load_plan
+from tideleg.plan import LifeTable, load_plan
 from tideleg.registry import installed
 from tideleg.starter import KINDS, new_plugin
 
 KERBSIDE = load_plan(Path(__file__).parents[3] / "profiles" / "kerbside" / "plan.toml")
+LIVES = {
+    "switch": [
+        {"model": "coffin-manson-arrhenius", "constants": "lesit-1997", "spread": 0.5},
+        {"model": "cips-2008", "constants": "cips-2008", "blocking_voltage": "1200 V", "bond_current": "10 A",
+         "bond_diameter": "300 um", "spread": 0.5},
+        {"model": "norris-landzberg", "constants": "sac-2005", "test_cycles": 2500, "test_swing": "125 K",
+         "test_maximum": "125 degC", "test_cycles_per_day": 24, "swing_range": ["20 K", "165 K"],
+         "maximum_range": ["25 degC", "150 degC"], "cycles_per_day_range": [1, 2000], "spread": 0.6},
+    ],
+    "capacitor": [
+        {"model": "capacitor-life", "rated_life": "60000 h", "rated_temperature": "85 degC", "rated_at": "core",
+         "law": "ten-kelvin", "voltage_law": "none", "temperature_range": [50, 105], "spread": 0.3},
+        {"model": "running-hours", "rated_hours": "60000 h", "runs": "always", "spread": 0.35},
+    ],
+}  # fmt: skip
+WORN = [
+    {
+        "part": part,
+        "key": f"life.{part}",
+        "model": one["model"],
+        "settings": {k: v for k, v in one.items() if k != "model"},
+    }
+    for part, models in LIVES.items()
+    for one in models
+]
+LIFE = {"life": LifeTable.model_validate({"parts": WORN})}
+KERBSIDE = KERBSIDE.model_copy(update=LIFE)
 NAMES = sorted({plugin.name for plugin in installed().plugins})
-EVERY = [check for name in NAMES for check in plugin_checks(name, shipped_plan(name, installed()), installed())]
+EVERY = [
+    check
+    for name in NAMES
+    for check in plugin_checks(name, shipped_plan(name, installed()).model_copy(update=LIFE), installed())
+]
 
 
 @pytest.mark.parametrize("check", EVERY, ids=lambda c: f"{c.plugin}:{c}")

@@ -1,0 +1,1 @@
+"""First-party life models, registered by entry point as a stranger's would be."""
