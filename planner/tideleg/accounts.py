@@ -12,6 +12,7 @@ from tideleg.columns import choice_name
 from tideleg.march import Demand, Settled
 from tideleg.outcome import BatteryEntry, ChoiceAccount, EnergyAccount, LossEntry, ThermalEntry
 from tideleg.stage import Stage
+from tideleg.wear import count_cycles
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -108,11 +109,25 @@ def battery_entry(battery: Battery, demand: Demand, steps: pd.DataFrame) -> Batt
         stored_change_j=-float(
             np.sum((steps["battery_power_w"].to_numpy() + steps["battery_heat_w"].to_numpy()) * demand.duration)
         ),
+        depth_cycles=() if soc is None else _by_depth(battery, demand, soc),
         least_voltage_v=float(voltage.min()),
         greatest_voltage_v=float(voltage.max()),
         greatest_discharge_a=float(max(current.max(), 0.0)),
         greatest_charge_a=float(max(-current.min(), 0.0)),
     )
+
+
+DEPTHS = (0.0, 0.01, 0.02, 0.05, 0.1, 0.2, 0.4, 0.6, 0.8, 1.0)
+"""Bands of depth of discharge for display; counting itself knows no classes [-]."""
+
+
+def _by_depth(battery: Battery, demand: Demand, soc: FloatArray) -> tuple[tuple[float, float, float], ...]:
+    """Return the cycles of the state of charge in one pass by their depth."""
+    time = np.concatenate([[0.0], np.cumsum(demand.duration)])
+    cycles = count_cycles(time, np.concatenate([[battery.start_soc], soc]), "half_cycles")
+    edges = np.array([*DEPTHS[:-1], DEPTHS[-1] + 1e-9])
+    counted, _ = np.histogram(cycles.range, edges, weights=cycles.weight)
+    return tuple((low, high, float(n)) for low, high, n in zip(DEPTHS, DEPTHS[1:], counted, strict=False) if n > 0.0)
 
 
 def thermal_entries(

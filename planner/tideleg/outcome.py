@@ -129,6 +129,8 @@ class BatteryEntry:
 
     throughput_wh : at the terminals, both ways [Wh]
     stored_change_j : energy at open-circuit voltage put in less taken out [J]
+    depth_cycles : (least depth, greatest depth [-], cycles in one pass [-]) by rainflow, rest as half cycles; full
+        cycles of equal throughput do not tell how deep they went
     """
 
     start_soc: float | None
@@ -143,6 +145,7 @@ class BatteryEntry:
     greatest_charge_a: float
     throughput_wh: float = 0.0
     stored_change_j: float = 0.0
+    depth_cycles: tuple[tuple[float, float, float], ...] = ()
 
 
 @dataclass(frozen=True)

@@ -442,3 +442,16 @@ def test_battery_ripple_is_held_against_its_limit(tmp_path):
     share = (1 / (2 * np.pi * 20e3 * 100e-6)) / np.hypot(1 / (2 * np.pi * 20e3 * 100e-6), 0.05)
     assert check.value == pytest.approx(20.0 / np.sqrt(12.0) * share, rel=0.02)
     assert not check.holds
+
+
+def test_cycles_of_the_charge_stand_by_depth_beside_equal_full_cycles(tmp_path):
+    battery = {"open_circuit_voltage": "400 V", "capacity": "10 Ah", "start_soc": "50 %"}
+    # 4 kW at 400 V is 10 A: one hour is the whole capacity. Out 10 %, back 10 %, out 2 %, back 2 %.
+    rows = "time_s,power_w\n0,4000\n360,-4000\n720,4000\n792,-4000\n864,0\n"
+    found = ideal(tmp_path, rows, battery=battery).missions[0].battery
+    by_depth = {(low, high): count for low, high, count in found.depth_cycles}
+    # ASTM E1049-85, 5.4.4, by hand: 50, 40, 50, 48, 50 %: one cycle of 10 % and one of 2 %.
+    assert sum(by_depth.values()) == 2.0
+    assert by_depth[0.02, 0.05] + by_depth.get((0.01, 0.02), 0.0) == 1.0
+    assert found.equivalent_full_cycles == pytest.approx(0.12, rel=1e-6)
+    assert found.throughput_wh == pytest.approx(4000 * 864 / 3600, rel=1e-9)

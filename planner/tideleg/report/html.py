@@ -101,6 +101,8 @@ def _books(outcome: Outcome) -> dict[str, Any]:
         "energy": words.energy_rows(outcome),
         "efficiency": words.efficiency_text(outcome.efficiency),
         "battery": [_battery(m) for m in outcome.missions],
+        "depth_heads": DEPTH_HEADS,
+        "depths": [(m.name, _depths(m)) for m in outcome.missions],
         "missions": [(m.name, f"{m.passes_per_year:g}", f"{len(m.steps)}", f"{m.passes}") for m in outcome.missions],
         "rules": words.all_rules(outcome),
         "inputs": list(outcome.inputs.sha256.items()),
@@ -136,11 +138,22 @@ def _battery(mission: MissionResult) -> tuple[str, ...]:
         mission.name,
         _span(b.start_soc, b.end_soc),
         _span(b.least_soc, b.greatest_soc),
-        f"{b.throughput_ah:.4g} Ah",
+        f"{b.throughput_ah:.4g} Ah, {b.throughput_wh / 1e3:.4g} kWh",
         "-" if b.equivalent_full_cycles is None else f"{b.equivalent_full_cycles:.3g}",
         f"{b.least_voltage_v:.4g} to {b.greatest_voltage_v:.4g} V",
         f"{b.greatest_discharge_a:.4g} A / {b.greatest_charge_a:.4g} A",
     )
+
+
+DEPTH_HEADS = ("depth of the cycle", "cycles in one pass", "throughput of these, of the capacity")
+
+
+def _depths(mission: MissionResult) -> list[tuple[str, ...]]:
+    """Return the cycles of the state of charge by depth: what equal full cycles do not tell."""
+    return [
+        (f"{100.0 * low:g} to {100.0 * high:g} %", f"{count:g}", f"{100.0 * count * (low + high):.3g} %")
+        for low, high, count in mission.battery.depth_cycles
+    ]
 
 
 def _span(begin: float | None, end: float | None) -> str:
