@@ -442,3 +442,42 @@ def test_battery_ripple_is_held_against_its_limit(tmp_path):
     share = (1 / (2 * np.pi * 20e3 * 100e-6)) / np.hypot(1 / (2 * np.pi * 20e3 * 100e-6), 0.05)
     assert check.value == pytest.approx(20.0 / np.sqrt(12.0) * share, rel=0.02)
     assert not check.holds
+
+
+def capacitors(tmp_path, rows, **keys):
+    stage = {**IDEAL["stage"], "link_capacitor": keys}
+    return ideal(tmp_path, rows, stage=stage, limits={"capacitor_voltage_utilisation": "90 %"})
+
+
+def test_a_capacitors_voltage_share_counts_half_its_ripple(tmp_path):
+    keys = {"rated_voltage": "1000 V", "capacitance": "10 uF"}
+    outcome = capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", **keys)
+    steps = outcome.steps
+    due = (steps["link_voltage_v"] + 0.5 * steps["link_capacitor.voltage_ripple_v"]) / 1000.0
+    np.testing.assert_allclose(steps["link_capacitor.voltage_share"], due, rtol=1e-12)
+    check = next(c for c in outcome.limits if c.name == "capacitor voltage utilisation")
+    assert check.value == pytest.approx(due.max())
+    assert check.holds == bool(due.max() <= 0.9)
+    assert check.limit == 0.9
+
+
+def test_a_spectrum_of_others_counts_in_the_capacitors_current(tmp_path):
+    keys = {"esr": "1 mohm", "external_ripple_spectrum": [["300 Hz", "18 A"], ["10 kHz", "24 A"]]}
+    outcome = capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", **keys)
+    assert outcome.steps["link_capacitor.current_rms_a"].iloc[0] == pytest.approx(
+        np.sqrt(2500 + 400 / 24 + 900), rel=1e-4
+    )
+
+
+def test_a_file_of_resistances_lies_beside_the_plan_and_is_fingerprinted(tmp_path):
+    (tmp_path / "esr.csv").write_text("frequency_hz,esr_ohm\n1000,0.004\n1e8,0.004\n")
+    rows = "time_s,power_w\n0,40000\n1,0\n"
+    by_file = capacitors(tmp_path, rows, esr_table="esr.csv").steps["link_capacitor.loss_w"]
+    np.testing.assert_allclose(by_file, capacitors(tmp_path, rows, esr="4 mohm").steps["link_capacitor.loss_w"])
+    assert "esr.csv" in capacitors(tmp_path, rows, esr_table="esr.csv").inputs.sha256
+
+
+def test_a_faulty_file_of_resistances_is_named_with_its_key(tmp_path):
+    (tmp_path / "esr.csv").write_text("frequency_hz,esr_ohm\n1000,-0.004\n1e8,0.004\n")
+    with pytest.raises(InputError, match=r"stage\.link_capacitor\.esr_table.*line 2: found -0\.004 ohm"):
+        capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", esr_table="esr.csv")

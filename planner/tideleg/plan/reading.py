@@ -185,14 +185,21 @@ def read_table(
     allowed = {name for model in models.values() for name in model.model_fields}
     faults = [(name, unknown_key(name, allowed)) for name in raw if name not in allowed]
     found: dict[str, BaseModel] = {}
+    # A file that a key names lies beside the file in which the key stands.
+    files: list[Path] = []
+    context = {
+        "files": files,
+        "folders": {name: plan.stage.origins.get(f"{key}.{name}", plan.folder / "plan").parent for name in raw},
+    }
     for label, model in models.items():
         own = {name: value for name, value in raw.items() if name in model.model_fields}
         try:
-            found[label] = model.model_validate(own)
+            found[label] = model.model_validate(own, context=context)
         except ValidationError as error:
             faults += [(dotted(one["loc"]), words(one)) for one in errors_of(error)]
     if faults:
         raise _table_faults(plan, key, dict(faults))
+    plan._extra_files = tuple(dict.fromkeys((*plan._extra_files, *files)))
     return found
 
 

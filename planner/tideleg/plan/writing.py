@@ -90,5 +90,7 @@ def _move_files(document: Any, before: Path, after: Path) -> None:
         if isinstance(given, str) and given.lower().endswith(".csv"):
             document["battery"][key] = moved(str(given))
     for table in document.get("stage", {}).values():
-        if isinstance(table, Table) and "part" in table:
-            table["part"] = moved(str(table["part"]))
+        if isinstance(table, Table):
+            for key, given in table.items():
+                if key == "part" or (isinstance(given, str) and given.lower().endswith(".csv")):
+                    table[key] = moved(str(given))
