@@ -41,7 +41,7 @@ from tideleg.contract import (
 )
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
-from tideleg.points import PointReader, PointTable
+from tideleg.points import PointReader, PointsFile, PointTable
 from tideleg.stress import Consumption, Cycles, LifeModel, LifeTerm, Stress, WornKind
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 
@@ -115,6 +115,7 @@ __all__ = [
     "Point",
     "PointReader",
     "PointTable",
+    "PointsFile",
     "Position",
     "ProfileError",
     "Rest",

@@ -184,14 +184,18 @@ def _extremes(part: StagePart, block: Settled) -> tuple[FloatArray, FloatArray]:
 def _capacitor(part: StagePart, block: Settled, one: Callable[[Any], FloatArray]) -> Columns:
     name = part.slot.name
     exchange = block.checked.operation.exchanges[name]
-    others = getattr(part.base, "external_ripple_current", None) or 0.0
+    others = 0.0 if part.base is None else part.base.external_mean_square()
     # Ripple of others on the port has no fixed phase to the stage's own: it adds in squares.
-    columns = {f"{name}.current_rms_a": one(np.sqrt(exchange.current.ac_mean_square() + others * others))}
+    columns = {f"{name}.current_rms_a": one(np.sqrt(exchange.current.ac_mean_square() + others))}
     if name not in PORT_CAPACITORS or part.slot.in_series > 1:
         columns[f"{name}.voltage_v"] = one(exchange.voltage)
     if part.base is not None and part.base.capacitance is not None:
         swing = exchange.current.charge_swing() / exchange.frequency
         columns[f"{name}.voltage_ripple_v"] = one(swing / part.base.capacitance)
+    if part.base is not None and part.base.rated_voltage is not None:
+        # The stage's own ripple counts by half its swing; where no capacitance is given it is not known, hence nil.
+        highest = exchange.voltage + 0.5 * columns.get(f"{name}.voltage_ripple_v", 0.0)
+        columns[f"{name}.voltage_share"] = one(highest / part.base.rated_voltage)
     return columns
 
 

@@ -175,6 +175,10 @@ def _voltage_checks(limits: LimitsTable, stage: Stage, trip_voltage: float | Non
                 column = f"{port}_voltage_v" if at_port else f"{name}.voltage_v"
                 value, *when = _greatest(seen, column)
                 yield _upper("capacitor voltage", name, value, rated, "V", when)
+            if rated is not None and limits.capacitor_voltage_utilisation is not None:
+                value, *when = _greatest(seen, f"{name}.voltage_share")
+                allowed = limits.capacitor_voltage_utilisation
+                yield _upper("capacitor voltage utilisation", name, value, allowed, "share", when)
 
 
 def _at_trip(blocked: float, trip_voltage: float, seen: Seen) -> float:

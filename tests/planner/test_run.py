@@ -455,3 +455,42 @@ def test_cycles_of_the_charge_stand_by_depth_beside_equal_full_cycles(tmp_path):
     assert by_depth[0.02, 0.05] + by_depth.get((0.01, 0.02), 0.0) == 1.0
     assert found.equivalent_full_cycles == pytest.approx(0.12, rel=1e-6)
     assert found.throughput_wh == pytest.approx(4000 * 864 / 3600, rel=1e-9)
+
+
+def capacitors(tmp_path, rows, **keys):
+    stage = {**IDEAL["stage"], "link_capacitor": keys}
+    return ideal(tmp_path, rows, stage=stage, limits={"capacitor_voltage_utilisation": "90 %"})
+
+
+def test_a_capacitors_voltage_share_counts_half_its_ripple(tmp_path):
+    keys = {"rated_voltage": "1000 V", "capacitance": "10 uF"}
+    outcome = capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", **keys)
+    steps = outcome.steps
+    due = (steps["link_voltage_v"] + 0.5 * steps["link_capacitor.voltage_ripple_v"]) / 1000.0
+    np.testing.assert_allclose(steps["link_capacitor.voltage_share"], due, rtol=1e-12)
+    check = next(c for c in outcome.limits if c.name == "capacitor voltage utilisation")
+    assert check.value == pytest.approx(due.max())
+    assert check.holds == bool(due.max() <= 0.9)
+    assert check.limit == 0.9
+
+
+def test_a_spectrum_of_others_counts_in_the_capacitors_current(tmp_path):
+    keys = {"esr": "1 mohm", "external_ripple_spectrum": [["300 Hz", "18 A"], ["10 kHz", "24 A"]]}
+    outcome = capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", **keys)
+    assert outcome.steps["link_capacitor.current_rms_a"].iloc[0] == pytest.approx(
+        np.sqrt(2500 + 400 / 24 + 900), rel=1e-4
+    )
+
+
+def test_a_file_of_resistances_lies_beside_the_plan_and_is_fingerprinted(tmp_path):
+    (tmp_path / "esr.csv").write_text("frequency_hz,esr_ohm\n1000,0.004\n1e8,0.004\n")
+    rows = "time_s,power_w\n0,40000\n1,0\n"
+    by_file = capacitors(tmp_path, rows, esr_table="esr.csv").steps["link_capacitor.loss_w"]
+    np.testing.assert_allclose(by_file, capacitors(tmp_path, rows, esr="4 mohm").steps["link_capacitor.loss_w"])
+    assert "esr.csv" in capacitors(tmp_path, rows, esr_table="esr.csv").inputs.sha256
+
+
+def test_a_faulty_file_of_resistances_is_named_with_its_key(tmp_path):
+    (tmp_path / "esr.csv").write_text("frequency_hz,esr_ohm\n1000,-0.004\n1e8,0.004\n")
+    with pytest.raises(InputError, match=r"stage\.link_capacitor\.esr_table.*esr.csv, line 2: found -0\.004 ohm"):
+        capacitors(tmp_path, "time_s,power_w\n0,40000\n1,0\n", esr_table="esr.csv")

@@ -162,6 +162,7 @@ class LimitsTable(Table):
     switch_current: Annotated[q.Current, Positive] | None = None
     ripple_ratio: Annotated[q.Share, Positive] | None = None
     voltage_utilisation: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
+    capacitor_voltage_utilisation: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
     battery_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
     battery_ripple_current: Annotated[q.Current, Positive] | None = None
     link_voltage_ripple: Annotated[q.Voltage, Positive] | None = None
@@ -309,6 +310,13 @@ class CapacitorBase(Table):
     rated_voltage: Annotated[q.Voltage, Positive] | None = None
     rated_current: Annotated[q.Current, Positive] | None = None
     external_ripple_current: Annotated[q.Current, NotNegative] | None = None
+    external_ripple_spectrum: tuple[
+        tuple[Annotated[q.Frequency, Positive], Annotated[q.Current, NotNegative]], ...
+    ] = ()
+
+    def external_mean_square(self) -> float:
+        """Return the mean square of the ripple of others on the port [A²]: one number, or the sum of a spectrum's."""
+        return (self.external_ripple_current or 0.0) ** 2 + sum(rms**2 for _, rms in self.external_ripple_spectrum)
 
 
 class MissionTable(Table):
