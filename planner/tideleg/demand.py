@@ -8,7 +8,7 @@ import numpy as np
 
 from tideleg.battery import ALWAYS, Battery
 from tideleg.march import Demand
-from tideleg.mission import Profile, Vehicle, read_profile
+from tideleg.mission import ROLES, Layout, Profile, Vehicle, read_profile
 from tideleg.plan import Curve, MissionTable, Plan
 from tideleg.stage import Stage
 from tideleg.waveform import FloatArray
@@ -86,6 +86,25 @@ def profile_of(plan: Plan, mission: MissionTable) -> Profile:
         interpolation=mission.interpolation,
         positive=mission.sign,
         vehicle=vehicle_of(plan),
+        layout=layout_of(mission),
+    )
+
+
+def layout_of(mission: MissionTable) -> Layout:
+    """Return what a mission declares of its file."""
+    table = mission.layout
+    columns = {role: getattr(table, role) for role in ROLES if getattr(table, role) is not None}
+    return Layout(
+        columns=columns,
+        unit=table.unit,
+        encoding="utf-8-sig" if table.encoding is None else table.encoding,
+        separator=table.separator,
+        decimal=table.decimal,
+        header_line=table.header_line,
+        stamps=table.stamps,
+        longest_gap_s=table.longest_gap,
+        gap=table.gap,
+        missing=table.missing,
     )
 
 
@@ -155,7 +174,7 @@ def _battery_temperature(plan: Plan, index: int, profile: Profile, steps: int) -
     limits = (battery.discharge_temperature, battery.charge_temperature)
     if all(curve is None or not curve.degc for curve in curves.values()) and not any(limits):
         return None
-    given = _column(getattr(profile, "battery_degc", None), mission.battery_temperature, steps)
+    given = _column(profile.battery_degc, mission.battery_temperature, steps)
     key = f"mission.{index}.battery_temperature"
     if given is None:
         what = "the battery depends on its temperature; give battery_temperature = '25 degC' or a column battery_degc"

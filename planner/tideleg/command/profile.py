@@ -17,6 +17,16 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--positive", choices=("discharge", "charge"), default="discharge", help="sign rule of the file"
     )
+    parser.add_argument("--time", metavar="COLUMN", help="column of time stamps, where it is not certain")
+    parser.add_argument("--power", metavar="COLUMN", help="column of power, where it is not certain")
+    parser.add_argument("--speed", metavar="COLUMN", help="column of speed, where it is not certain")
+    parser.add_argument("--unit", choices=("W", "kW", "MW", "m/s", "km/h", "mph"), help="where the header has none")
+    parser.add_argument("--encoding", default="utf-8-sig", metavar="NAME", help="of the text, such as latin-1")
+    parser.add_argument(
+        "--stamps",
+        choices=("seconds", "minutes", "hours", "clock", "iso", "day first", "month first"),
+        help="their kind",
+    )
     parser.add_argument("--json", action="store_true", help="print JSON for machines")
 
 
@@ -28,16 +38,18 @@ def execute(given: argparse.Namespace) -> int:
 
     from tideleg.command.passport_page import print_passport
     from tideleg.demand import vehicle_of
-    from tideleg.mission import passport, read_profile
+    from tideleg.mission import Layout, passport, read_profile
     from tideleg.plan import load_plan
 
     vehicle = vehicle_of(load_plan(given.plan)) if given.plan is not None else None
+    named = {role: getattr(given, role) for role in ("time", "power", "speed") if getattr(given, role) is not None}
     profile = read_profile(
         given.file,
         terminals=given.terminals,
         interpolation=given.interpolation,
         positive=given.positive,
         vehicle=vehicle,
+        layout=Layout(columns=named, unit=given.unit, encoding=given.encoding, stamps=given.stamps),
     )
     found = passport(profile)
     if given.json:

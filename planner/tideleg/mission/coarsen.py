@@ -15,6 +15,7 @@ _HELD = (
     "link_voltage_v",
     "coolant_degc",
     "ambient_degc",
+    "battery_degc",
     "power_max_w",
     "power_min_w",
     "speed_m_s",

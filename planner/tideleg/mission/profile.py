@@ -17,7 +17,8 @@ class Profile:
     terminals : where the power is meant
     time_s, duration_s : start and length of each step [s]
     power_w : positive = discharge [W]
-    link_voltage_v, coolant_degc, ambient_degc, power_max_w, power_min_w : columns that override the plan, or None
+    link_voltage_v, coolant_degc, ambient_degc, battery_degc, power_max_w, power_min_w : columns that override the plan,
+        or None
     speed_m_s : mean speed of each step where a speed profile was read [m/s]
     braked_by_friction_j : braking energy at the wheels that regeneration did not take [J]
     rules : sentences that say how the file was read; every output prints them
@@ -33,6 +34,7 @@ class Profile:
     link_voltage_v: FloatArray | None = field(default=None, repr=False)
     coolant_degc: FloatArray | None = field(default=None, repr=False)
     ambient_degc: FloatArray | None = field(default=None, repr=False)
+    battery_degc: FloatArray | None = field(default=None, repr=False)
     power_max_w: FloatArray | None = field(default=None, repr=False)
     power_min_w: FloatArray | None = field(default=None, repr=False)
     speed_m_s: FloatArray | None = field(default=None, repr=False)

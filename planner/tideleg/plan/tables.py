@@ -319,10 +319,45 @@ class CapacitorBase(Table):
         return (self.external_ripple_current or 0.0) ** 2 + sum(rms**2 for _, rms in self.external_ripple_spectrum)
 
 
+class LayoutTable(Table):
+    """layout of a [[mission]]: what is declared of its file; the rest is told from the file, or asked for.
+
+    time, duration, power, speed, link_voltage, coolant, ambient, battery_temperature, power_max, power_min : names of
+        columns in the file; once one is named, columns that are not known are left unread
+    """
+
+    time: str | None = None
+    duration: str | None = None
+    power: str | None = None
+    speed: str | None = None
+    link_voltage: str | None = None
+    coolant: str | None = None
+    ambient: str | None = None
+    battery_temperature: str | None = None
+    power_max: str | None = None
+    power_min: str | None = None
+    unit: Literal["W", "kW", "MW", "m/s", "km/h", "mph"] | None = None
+    encoding: str | None = None
+    separator: Literal[",", ";", "\t"] | None = None
+    decimal: Literal[".", ","] | None = None
+    header_line: int | None = Field(default=None, ge=1)
+    stamps: Literal["seconds", "minutes", "hours", "clock", "iso", "day first", "month first"] | None = None
+    longest_gap: Annotated[q.Time, Positive] | None = None
+    gap: Literal["refuse", "hold", "zero"] = "refuse"
+    missing: Literal["refuse", "drop"] = "refuse"
+
+    @model_validator(mode="after")
+    def _a_rule_has_a_length(self) -> Self:
+        if self.gap != "refuse" and self.longest_gap is None:
+            raise ValueError("longest_gap is missing: it says how long a step must be to be a hole, such as '60 s'")
+        return self
+
+
 class MissionTable(Table):
     """One [[mission]]."""
 
     profile: str
+    layout: LayoutTable = LayoutTable()
     name: str | None = None
     passes_per_year: float = Field(default=1.0, gt=0.0)
     terminals: Literal["link", "battery"] = "link"

@@ -176,3 +176,14 @@ def test_size_from_the_command_line_writes_a_plan_that_runs(capsys, commuter):
     assert "battery capacitance kept" in shown
     assert main(["run", str(commuter / "sized" / "sized.toml"), "--brief", "--enforce"]) == 0
     assert sorted(p.name for p in commuter.iterdir() if p.name.startswith(".")) == []
+
+
+def test_a_logs_columns_can_be_named_on_the_command_line(capsys, tmp_path):
+    (tmp_path / "log.csv").write_bytes("Zeit °;P\n00:00:00;1\n00:01:00;2\n00:02:00;0\n".encode("latin-1"))
+    file = str(tmp_path / "log.csv")
+    assert main(["profile", file]) == 2
+    assert "encoding = 'latin-1'" in capsys.readouterr().err
+    asked = ["profile", file, "--encoding", "latin-1", "--time", "Zeit °", "--power", "P", "--unit", "kW", "--json"]
+    assert main(asked) == 0
+    told = json.loads(capsys.readouterr().out)
+    assert any("clock times" in rule for rule in told["rules"])
