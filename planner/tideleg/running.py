@@ -16,6 +16,7 @@ from tideleg.demand import battery_of, demand_of, profile_of
 from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
 from tideleg.feasible import refuse_impossible_power, refuse_infeasible_rest, refuse_infeasible_steps
+from tideleg.life_binding import Worn, bind_life, without_life
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
@@ -24,16 +25,7 @@ from tideleg.plan import Plan, load_plan
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
 from tideleg.verdict import verdict_sentence, warnings_of
-from tideleg.wearing import (
-    Pass,
-    Worn,
-    bind_life,
-    life_checks_of,
-    start_temperatures,
-    wear_of,
-    wear_warnings,
-    without_life,
-)
+from tideleg.wearing import Pass, life_checks_of, start_temperatures, wear_of, wear_warnings
 from tideleg.worst import worst_instant
 
 if TYPE_CHECKING:

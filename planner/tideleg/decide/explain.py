@@ -65,8 +65,8 @@ def _coarser(
 
 
 def _damage_ratio(outcome: Outcome, other: Outcome) -> float | None:
-    """Return the damage in another run of the part that wears most here, over its damage here [-]."""
-    worst = outcome.wear.worst
+    """Return the damage in another run of the part that temperature wears most here, over its damage here [-]."""
+    worst = outcome.wear.worst_heated
     if worst is None or worst.damage_per_year <= 0.0:
         return None
     twins = [
