@@ -53,6 +53,11 @@ def with_battery_resistance(plan: Plan, factor: float) -> Plan:
     return plan.model_copy(update={"battery": plan.battery.model_copy(update=update)})
 
 
+def with_charge_limit(plan: Plan, ampere: float) -> Plan:
+    """Return the plan with the battery's charge current limited [A]; what is asked beyond is curtailed."""
+    return plan.model_copy(update={"battery": plan.battery.model_copy(update={"current_limit_charge": ampere})})
+
+
 def _scaled(curve: Curve, factor: float) -> Curve:
     return Curve(soc=curve.soc, value=tuple(factor * value for value in curve.value))
 

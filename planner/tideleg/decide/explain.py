@@ -9,6 +9,7 @@ from tideleg.decide.changes import (
     part_number,
     stage_number,
     with_battery_resistance,
+    with_charge_limit,
     with_part,
     with_stage,
     with_warmer_coolant,
@@ -23,6 +24,9 @@ WARMER_K = 10.0
 MERGED = (2, 5)
 """Numbers of neighbouring steps that are merged to test how far the profile's resolution limits the answer."""
 
+LESS_CHARGE = 0.5
+"""Share of the greatest charge current to which regeneration is limited, to see what its peaks cost."""
+
 AGED_RESISTANCE = 1.7
 """Growth of the battery's resistance at its end of life [-]; common practice, no source."""
 
@@ -32,7 +36,7 @@ def explained(
 ) -> Outcome:
     """Return the outcome with its `changes` and `coarser` filled: one re-run for each."""
     changes = []
-    for words, variant in _variants(plan):
+    for words, variant in (*_variants(plan), *_gentler(plan, outcome)):
         try:
             other = run(variant, registry=registry, progress=progress)
         except NoEquilibriumError:
@@ -94,8 +98,6 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     """Yield (words, changed plan) for every change worth asking about."""
     if any(mission.coolant is not None for mission in plan.mission):
         yield f"coolant {WARMER_K:g} K warmer", with_warmer_coolant(plan, WARMER_K)
-        if plan.life is not None and plan.life.parts:
-            yield f"coolant {WARMER_K:g} K cooler", with_warmer_coolant(plan, -WARMER_K)
     frequency = stage_number(plan, "switching_frequency", "frequency")
     if frequency is not None:
         yield "switching frequency 25 % higher", with_stage(plan, switching_frequency=1.25 * frequency)
@@ -108,6 +110,18 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
         yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)
     if any(value > 0.0 for value in plan.battery.resistance.value):
         yield f"battery aged: resistance times {AGED_RESISTANCE:g}", with_battery_resistance(plan, AGED_RESISTANCE)
+
+
+def _gentler(plan: Plan, outcome: Outcome) -> Iterator[tuple[str, Plan]]:
+    """Yield what may spare the parts, where their life is asked about: colder coolant, less regeneration."""
+    if outcome.wear.worst_heated is None:
+        return
+    if any(mission.coolant is not None for mission in plan.mission):
+        yield f"coolant {WARMER_K:g} K cooler", with_warmer_coolant(plan, -WARMER_K)
+    charge = max(mission.battery.greatest_charge_a for mission in outcome.missions)
+    if charge > 0.0:
+        less = LESS_CHARGE * charge
+        yield f"regeneration limited to {less:.0f} A, half of what it reached", with_charge_limit(plan, less)
 
 
 def _change(words: str, outcome: Outcome, other: Outcome) -> Change:

@@ -50,7 +50,7 @@ def draw_hours(wear: Wear) -> Picture:
         finish(axes)
     panels[-1].set_xlabel("mean temperature of a step in degC")
     figure.supylabel("hours a year", fontsize=10)
-    caption = "Hours a year by mean temperature of each step; dashed: the temperature that counts as hot."
+    caption = "Hours a year by mean temperature of each step, in bands of equal width for each part; dashed: the temperature that counts as hot."
     return Picture(figure, caption, f"Hours by temperature: {'; '.join(told)}.")
 
 
@@ -162,7 +162,7 @@ def draw_life(part: PartWear) -> Picture:
     axes.xaxis.set_major_locator(LogLocator(subs=(1.0, 2.0, 5.0)))
     axes.xaxis.set_major_formatter(lambda value, _: f"{value:g}")
     axes.set_ylim(0.0, 100.0)
-    axes.set_xlabel("years")
+    axes.set_xlabel("time in service in years")
     axes.set_ylabel("share that has failed in %")
     legend_above(axes, 3)
     finish(axes)

@@ -48,7 +48,17 @@ def life_answer(outcome: Outcome) -> str:
     heated = outcome.wear.worst_heated
     if heated is not None and heated is not worst:
         text += f" {sentence_of('is what temperature wears most', heated)}"
-    return text
+    return text + halving_text(outcome)
+
+
+def halving_text(outcome: Outcome) -> str:
+    """Return which of the changes that were tried halve the damage, the strongest first; empty where none was."""
+    asked = [change for change in outcome.changes if change.damage is not None]
+    if not asked:
+        return ""
+    halving = sorted((c for c in asked if c.damage is not None and c.damage <= 0.5), key=lambda c: c.damage or 0.0)
+    told = "; ".join(f"{c.what} ({c.damage:.2g} times{'' if c.holds else ', but limits break'})" for c in halving)
+    return f" Damage at least halves with: {told}." if told else " None of the changes tried halves the damage."
 
 
 def sentence_of(role: str, part: PartWear) -> str:
