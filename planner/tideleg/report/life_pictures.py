@@ -50,7 +50,10 @@ def draw_hours(wear: Wear) -> Picture:
         finish(axes)
     panels[-1].set_xlabel("mean temperature of a step in degC")
     figure.supylabel("hours a year", fontsize=10)
-    caption = "Hours a year by mean temperature of each step, in bands of equal width for each part; dashed: the temperature that counts as hot."
+    caption = (
+        "Hours a year by mean temperature of each step, in bands of equal width for each part; dashed: the temperature"
+        " that counts as hot."
+    )
     return Picture(figure, caption, f"Hours by temperature: {'; '.join(told)}.")
 
 
