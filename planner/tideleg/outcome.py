@@ -276,8 +276,8 @@ class Change:
     used : share of that limit in use [-]; None where there is no answer
     greatest_junction_degc : None where no junction is modelled or there is no answer
     efficiency : [-]; None where there is no answer
-    damage : of the part that wears most in the unchanged plan, over its damage there [-]; None where no life is
-        modelled or there is no answer
+    damage : of the part that temperature wears most in the unchanged plan, over its damage there [-]; None where no
+        life is modelled or there is no answer
     """
 
     what: str
@@ -296,7 +296,7 @@ class Coarser:
     merged : how many steps became one
     mean_square_change : of the battery current, over its own value [-]
     greatest_junction_change_k : None where no junction is modelled
-    damage_change : of the part that wears most, over its own value [-]; None where no life is modelled
+    damage_change : of the part that temperature wears most, over its own value [-]; None where no life is modelled
     """
 
     merged: int

@@ -18,6 +18,7 @@ from tideleg.errors import InputError
 from tideleg.facts import inputs_of, part_entries, stage_facts
 from tideleg.feasible import refuse_impossible_power, refuse_infeasible_rest, refuse_infeasible_steps
 from tideleg.grades import Marched, grade_entries, placeholder_words
+from tideleg.life_binding import Worn, bind_life, without_life
 from tideleg.limits import Seen, check_limits, unchecked_limits
 from tideleg.march import Demand, Settled, march, start
 from tideleg.mission import Profile, coarsened
@@ -27,16 +28,7 @@ from tideleg.reaching import reach_of
 from tideleg.registry import Registry
 from tideleg.stage import Stage, build_stage
 from tideleg.verdict import cautions_of, dew_warnings, verdict_sentence, warnings_of
-from tideleg.wearing import (
-    Pass,
-    Worn,
-    bind_life,
-    life_checks_of,
-    start_temperatures,
-    wear_of,
-    wear_warnings,
-    without_life,
-)
+from tideleg.wearing import Pass, life_checks_of, start_temperatures, wear_of, wear_warnings
 from tideleg.worst import worst_instant
 from tideleg.year import year_of
 

@@ -11,13 +11,13 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from tideleg.contract import Slot
+from tideleg.life_binding import Worn
 from tideleg.limits import LimitCheck
 from tideleg.march import Demand, start
-from tideleg.plan import LifeTable, Plan, WornTable, read_table
+from tideleg.plan import LifeTable, Plan
 from tideleg.registry import call_plugin
 from tideleg.stage import Stage
-from tideleg.stress import Cycles, LifeModel, LifeTerm, Stress
+from tideleg.stress import Cycles, Stress
 from tideleg.waveform import FloatArray
 from tideleg.wear import (
     RESIDUE_RULES,
@@ -29,7 +29,6 @@ from tideleg.wear import (
     lifetime_quantile,
 )
 from tideleg.wear.lifetime import YEAR_S
-from tideleg.wear.rainflow import joined_cycles
 from tideleg.worn import Consumer, CycleTrace, DamageTrace, HeatHistory, PartWear, SwingBand, Wear
 
 if TYPE_CHECKING:
@@ -46,20 +45,13 @@ TOP = 20
 BANDS_K = (0.0, 5.0, 10.0, 20.0, 30.0, 40.0, 60.0, 80.0, np.inf)
 """Bands of swing for display; counting itself knows no classes [K]."""
 
+HOUR_BANDS_K, MOST_HOUR_BANDS = (1.0, 2.0, 5.0, 10.0), 20
+"""Widths of the bands in which hours by temperature are shown [K]: the finest that gives at most so many."""
+
 OUTSIDE_SHARE = 0.10
 """Share of damage from outside a model's data from which a reader is warned [-]."""
 
 PORTS = {"battery_capacitor": "battery_voltage_v", "link_capacitor": "link_voltage_v"}
-
-
-class Worn(NamedTuple):
-    """One life model bound to one sort of part: its name, how many the stage has, whose model, its term."""
-
-    part: str
-    kind: str
-    copies: int
-    model: LifeModel
-    term: LifeTerm
 
 
 class Pass(NamedTuple):
@@ -79,45 +71,6 @@ class Pass(NamedTuple):
         return float(self.demand.duration.sum())
 
 
-def bind_life(plan: Plan, stage: Stage) -> tuple[Worn, ...]:
-    """Return the life models of a plan, bound to the parts of its stage.
-
-    Raises
-    ------
-    PlanError
-        If a table names no part of the stage, a part of another kind, one without temperature, or its keys do not
-        hold; file, line and key are named.
-    PluginError
-        If no life model of that name is installed.
-    """
-    tables = () if plan.life is None else plan.life.parts
-    return tuple(worn for table in tables for worn in _bound(plan, stage, table))
-
-
-def _bound(plan: Plan, stage: Stage, table: WornTable) -> list[Worn]:
-    model = stage.registry.life(table.model)
-    settings = read_table(plan, table.key, table.settings, {"life": model.settings})["life"]
-    term = call_plugin(stage.registry, model, partial(model.term, settings))
-    if model.reads == "stage":
-        return [Worn(table.part, "stage", 1, model, term)]
-    slots = [part for part in stage.parts if part.slot.table == table.part]
-    if not slots:
-        known = ", ".join(dict.fromkeys(p.slot.table for p in stage.parts if p.slot.kind not in ("busbar", "control")))
-        raise plan.fault(table.key, f"found a life of {table.part!r}, which the stage does not have; it has {known}")
-    _refuse_unfit(plan, stage, table, model, [part.slot for part in slots])
-    return [Worn(part.slot.name, part.slot.kind, int(np.max(part.total)), model, term) for part in slots]
-
-
-def _refuse_unfit(plan: Plan, stage: Stage, table: WornTable, model: LifeModel, slots: list[Slot]) -> None:
-    for slot in slots:
-        if slot.kind != model.reads:
-            what = f"life model {table.model!r} is for a {model.reads}, and {table.part} is a {slot.kind}"
-            raise plan.fault(f"{table.key}.model", f"{what}; choose another model")
-        if slot.name not in stage.seated:
-            what = f"the life of {table.part} needs its temperature, and it has no thermal path"
-            raise plan.fault(table.key, f"{what}; give its thermal keys in [stage.{slot.table}], or drop this table")
-
-
 def start_temperatures(
     stage: Stage, battery: Battery, demand: Demand, begin: float | str, steps: pd.DataFrame
 ) -> dict[str, float]:
@@ -135,13 +88,13 @@ def wear_of(plan: Plan, stage: Stage, worn: tuple[Worn, ...], passes: Mapping[st
     Parameters
     ----------
     plan, stage : what was run
-    worn : see `bind_life`
+    worn : see `life_binding`
     passes : by mission
     """
     table = plan.life or LifeTable()
     cycles = {name: {mission: _cycles(table, name, one) for mission, one in passes.items()} for name in stage.seated}
     parts = [_part_wear(table, stage, one, cycles.get(one.part, {}), passes) for one in worn]
-    heat = tuple(_heat(table, name, cycles[name], passes) for name in stage.seated)
+    heat = tuple(_heat(_hot_above(plan, stage, name), name, cycles[name], passes) for name in stage.seated)
     consumers = sorted((c for part in parts for c in _consumers(part, passes)), key=lambda c: -c.damage_per_year)
     return Wear(
         residue=f"{table.residue}: {RESIDUE_RULES[table.residue]}",
@@ -210,6 +163,7 @@ def _part_wear(
         part=worn.part,
         model=worn.model.name,
         mechanism=worn.term.mechanism,
+        heated=worn.kind != "stage",
         copies=worn.copies,
         damage_per_year=yearly,
         damage_per_pass=by_pass,
@@ -274,25 +228,41 @@ def _consumers(part: PartWear, passes: Mapping[str, Pass]) -> list[Consumer]:
     return found
 
 
-def _heat(table: LifeTable, part: str, cycles: Mapping[str, Cycles], passes: Mapping[str, Pass]) -> HeatHistory:
+def _hot_above(plan: Plan, stage: Stage, part: str) -> float | None:
+    """Return the temperature above which hours are told apart: the plan's, or the limit of that kind of part [degC]."""
+    if plan.life is not None and plan.life.hot_above is not None:
+        return plan.life.hot_above
+    limits = {
+        "switch": plan.limits.junction_temperature,
+        "inductor": plan.limits.inductor_temperature,
+        "capacitor": plan.limits.capacitor_temperature,
+    }
+    return limits.get(stage.part(part).slot.kind)
+
+
+def _heat(hot: float | None, part: str, cycles: Mapping[str, Cycles], passes: Mapping[str, Pass]) -> HeatHistory:
     mean = [one.steps[f"{part}.temperature_mean_degc"].to_numpy() for one in passes.values()]
     end = [one.steps[f"{part}.temperature_degc"].to_numpy() for one in passes.values()]
     yearly = np.concatenate([one.passes_per_year * one.demand.duration for one in passes.values()])
     temperature = np.concatenate(mean)
-    edges, hours = hours_at_temperature(temperature, yearly)
-    whole = joined_cycles(list(cycles.values()))
-    per_year = sum(one.passes_per_year * float(cycles[m].weight.sum()) for m, one in passes.items())
+    band = next((b for b in HOUR_BANDS_K if np.ptp(temperature) <= MOST_HOUR_BANDS * b), HOUR_BANDS_K[-1])
+    edges, hours = hours_at_temperature(temperature, yearly, band)
+    number = np.concatenate([one.passes_per_year * cycles[m].weight for m, one in passes.items()])
+    swings = np.concatenate([cycles[m].range for m in passes])
+    counts, _ = np.histogram(swings, np.asarray(BANDS_K), weights=number)
     return HeatHistory(
         part=part,
         greatest_degc=float(max(e.max() for e in end)),
         mean_degc=float(np.sum(temperature * yearly) / yearly.sum()),
-        greatest_swing_k=float(whole.range.max(initial=0.0)),
-        cycles_per_year=per_year,
+        greatest_swing_k=float(swings.max(initial=0.0)),
+        cycles_per_year=float(number.sum()),
         hours_per_year=float(yearly.sum()) / 3600.0,
         band_edges_degc=tuple(edges.tolist()),
         band_hours=tuple(hours.tolist()),
-        hot_above_degc=table.hot_above,
-        hot_hours=None if table.hot_above is None else hours_above(table.hot_above, temperature, yearly),
+        swing_edges_k=BANDS_K,
+        swing_counts=tuple(counts.tolist()),
+        hot_above_degc=hot,
+        hot_hours=None if hot is None else hours_above(hot, temperature, yearly),
     )
 
 
@@ -312,7 +282,7 @@ def life_checks_of(wear: Wear) -> tuple[LimitCheck, ...]:
             holds=bool(part.life_at_target_years >= part.target_years),
         )
         for part in wear.parts
-        if part.target_years is not None and np.isfinite(part.life_at_target_years)
+        if part.target_years is not None
     )
 
 
@@ -326,19 +296,4 @@ def wear_warnings(wear: Wear, table: LifeTable | None) -> tuple[str, ...]:
     ]
     if table is not None and table.residue == "closed_only" and wear.parts:
         found.append("residue = 'closed_only' leaves out the greatest swings: lives by cycles are too long")
-    years = sum(h.hours_per_year for h in wear.heat[:1]) * 3600.0 / YEAR_S
-    if years > 1.0:
-        found.append(f"the missions of a year last {years:.3g} years: passes_per_year is too great for a life")
     return tuple(found)
-
-
-def without_life(stage: Stage, worn: tuple[Worn, ...]) -> tuple[str, ...]:
-    """Return one sentence for each sort of part that has no life model."""
-    kinds = ("switch", "inductor", "capacitor")
-    tables = {part.slot.table: part.slot.name for part in stage.parts if part.slot.kind in kinds}
-    known = {one.part for one in worn}
-    return tuple(
-        f"life of {table.replace('_', ' ')}: no [life.{table}] given"
-        for table, name in tables.items()
-        if name not in known
-    )

@@ -32,7 +32,9 @@ class HeatHistory:
     cycles_per_year : of any size [1/year]
     hours_per_year : in all missions together
     band_edges_degc, band_hours : hours a year by temperature
-    hot_above_degc, hot_hours : hours a year above it; None where the plan names no such temperature
+    swing_edges_k, swing_counts : cycles a year by swing; the last band has no upper end
+    hot_above_degc, hot_hours : hours a year above it, the part's limit if the plan names none; None where it has
+        neither
     """
 
     part: str
@@ -43,6 +45,8 @@ class HeatHistory:
     hours_per_year: float
     band_edges_degc: tuple[float, ...]
     band_hours: tuple[float, ...]
+    swing_edges_k: tuple[float, ...]
+    swing_counts: tuple[float, ...]
     hot_above_degc: float | None
     hot_hours: float | None
 
@@ -70,6 +74,7 @@ class PartWear:
 
     part : slot name, or the name the plan gives to what wears beside the stage
     model, mechanism : whose answer it is
+    heated : whether temperature wears it; False of what merely runs along
     copies : equal parts in the stage; the first of them to fail ends the stage's life
     damage_per_year : Miner sum of one part with its median life [1/year]
     damage_per_pass : by mission [-]
@@ -86,6 +91,7 @@ class PartWear:
     part: str
     model: str
     mechanism: str
+    heated: bool
     copies: int
     damage_per_year: float
     damage_per_pass: Mapping[str, float]
@@ -139,6 +145,11 @@ class Wear:
     def worst(self) -> PartWear | None:
         """The part whose life is the shortest, or None where no life model is given."""
         return self.parts[0] if self.parts else None
+
+    @property
+    def worst_heated(self) -> PartWear | None:
+        """The same of the parts that temperature wears: what design, cooling and mission can change."""
+        return next((part for part in self.parts if part.heated), None)
 
 
 NO_WEAR = Wear("", (), (), ())

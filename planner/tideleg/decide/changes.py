@@ -71,6 +71,11 @@ def with_aged_battery(plan: Plan) -> Plan:
     return plan.model_copy(update={"battery": battery.model_copy(update=update)})
 
 
+def with_charge_limit(plan: Plan, ampere: float) -> Plan:
+    """Return the plan with the battery's charge current limited [A]; what is asked beyond is curtailed."""
+    return plan.model_copy(update={"battery": plan.battery.model_copy(update={"current_limit_charge": ampere})})
+
+
 def stage_number(plan: Plan, key: str, dimension: str) -> float | None:
     """Return a quantity directly under [stage] in its base unit, or None where it is not given."""
     given = plan.stage.settings.get(key)

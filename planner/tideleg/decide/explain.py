@@ -8,6 +8,7 @@ from collections.abc import Iterator
 from tideleg.decide.changes import (
     inductance_of,
     stage_number,
+    with_charge_limit,
     with_inductance,
     with_part,
     with_stage,
@@ -25,13 +26,16 @@ WARMER_K = 10.0
 MERGED = (2, 5)
 """Numbers of neighbouring steps that are merged to test how far the profile's resolution limits the answer."""
 
+LESS_CHARGE = 0.5
+"""Share of the greatest charge current to which regeneration is limited, to see what its peaks cost."""
+
 
 def explained(
     plan: Plan, outcome: Outcome, *, registry: Registry | None = None, progress: Progress | None = None
 ) -> Outcome:
     """Return the outcome with what further runs tell: changes, resolution, the aged pack, a loss of coolant."""
     changes = []
-    for words, variant in _variants(plan):
+    for words, variant in (*_variants(plan), *_gentler(plan, outcome)):
         try:
             other = run(variant, registry=registry, progress=progress)
         except NoEquilibriumError:
@@ -70,8 +74,8 @@ def _coarser(
 
 
 def _damage_ratio(outcome: Outcome, other: Outcome) -> float | None:
-    """Return the damage in another run of the part that wears most here, over its damage here [-]."""
-    worst = outcome.wear.worst
+    """Return the damage in another run of the part that temperature wears most here, over its damage here [-]."""
+    worst = outcome.wear.worst_heated
     if worst is None or worst.damage_per_year <= 0.0:
         return None
     twins = [
@@ -99,8 +103,6 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     """Yield (words, changed plan) for every change worth asking about."""
     if any(mission.coolant is not None for mission in plan.mission):
         yield f"coolant {WARMER_K:g} K warmer", with_warmer_coolant(plan, WARMER_K)
-        if plan.life is not None and plan.life.parts:
-            yield f"coolant {WARMER_K:g} K cooler", with_warmer_coolant(plan, -WARMER_K)
     frequency = stage_number(plan, "switching_frequency", "frequency")
     if frequency is not None:
         yield "switching frequency 25 % higher", with_stage(plan, switching_frequency=1.25 * frequency)
@@ -111,6 +113,18 @@ def _variants(plan: Plan) -> Iterator[tuple[str, Plan]]:
     chips = plan.stage.parts.get("switch", {}).get("in_parallel", 1)
     if "switch" in plan.stage.parts and isinstance(chips, int):
         yield f"{chips + 1} chips in parallel instead of {chips}", with_part(plan, "switch", in_parallel=chips + 1)
+
+
+def _gentler(plan: Plan, outcome: Outcome) -> Iterator[tuple[str, Plan]]:
+    """Yield what may spare the parts, where their life is asked about: colder coolant, less regeneration."""
+    if outcome.wear.worst_heated is None:
+        return
+    if any(mission.coolant is not None for mission in plan.mission):
+        yield f"coolant {WARMER_K:g} K cooler", with_warmer_coolant(plan, -WARMER_K)
+    charge = max(mission.battery.greatest_charge_a for mission in outcome.missions)
+    if charge > 0.0:
+        less = LESS_CHARGE * charge
+        yield f"regeneration limited to {less:.0f} A, half of what it reached", with_charge_limit(plan, less)
 
 
 def _change(words: str, outcome: Outcome, other: Outcome) -> Change:

@@ -7,6 +7,7 @@ import re
 from tideleg.outcome import Outcome
 from tideleg.report.bars import draw_losses, draw_margins
 from tideleg.report.drawing import Picture
+from tideleg.report.life_pictures import draw_cycles, draw_damage, draw_hours, draw_life
 from tideleg.report.reach_map import draw_reach
 from tideleg.report.traces import draw_power, draw_temperatures, draw_waveforms, has_waveforms
 
@@ -26,6 +27,21 @@ def draw_all(outcome: Outcome) -> dict[str, Picture]:
         drawn["margins"] = draw_margins(outcome)
     if has_waveforms(outcome):
         drawn["waveforms"] = draw_waveforms(outcome)
+    return drawn | _wear(outcome)
+
+
+def _wear(outcome: Outcome) -> dict[str, Picture]:
+    """Return the pictures of wear that there are data for."""
+    wear = outcome.wear
+    drawn: dict[str, Picture] = {"hours": draw_hours(wear)} if wear.heat else {}
+    cycled = [part for part in wear.parts if part.cycles is not None and part.damage_per_year > 0.0]
+    if cycled:
+        drawn["cycles"] = draw_cycles(cycled[0])
+    worn = [part for part in wear.parts if part.damage_per_year > 0.0]
+    if worn:
+        drawn["damage"] = draw_damage(worn, outcome)
+        heated = [part for part in worn if part.heated]
+        drawn["life"] = draw_life((heated or worn)[0])
     return drawn
 
 

@@ -10,7 +10,7 @@ import jinja2
 
 from tideleg.caution import ampere_text
 from tideleg.outcome import LossEntry, MissionResult, Outcome, PartEntry, ThermalEntry
-from tideleg.report import words
+from tideleg.report import wear_words, words
 from tideleg.report.drawing import Picture
 
 
@@ -28,7 +28,7 @@ def render_html(outcome: Outcome, pictures: Mapping[str, tuple[bytes, Picture]])
         for name, (png, picture) in pictures.items()
     }
     over_time = [name for name in shown if name.startswith(("power", "reach", "temperatures"))]
-    content = _page_one(outcome) | _stage(outcome) | _books(outcome)
+    content = _page_one(outcome) | _stage(outcome) | _books(outcome) | _wear(outcome)
     return environment.get_template("page.html.jinja").render(
         outcome=outcome, pictures=shown, over_time=over_time, broken=words.BROKEN, **content
     )
@@ -108,6 +108,19 @@ def _books(outcome: Outcome) -> dict[str, Any]:
         "inputs": list(outcome.inputs.sha256.items()),
         "versions": list(outcome.inputs.versions.items()),
         "seed": "none: nothing is left to chance" if outcome.inputs.seed is None else str(outcome.inputs.seed),
+    }
+
+
+def _wear(outcome: Outcome) -> dict[str, Any]:
+    return {
+        "heat_heads": wear_words.HEAT_HEADS,
+        "heat": [wear_words.heat_cells(entry) for entry in outcome.wear.heat],
+        "wear_heads": wear_words.WEAR_HEADS,
+        "wear": [wear_words.wear_cells(part) for part in outcome.wear.parts],
+        "consumer_heads": wear_words.CONSUMER_HEADS,
+        "consumers": [wear_words.consumer_cells(one) for one in outcome.wear.consumers],
+        "by_mission": wear_words.mission_rows(outcome),
+        "residue": outcome.wear.residue,
     }
 
 

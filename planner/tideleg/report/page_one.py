@@ -100,8 +100,9 @@ def _changes(console: Console, changes: tuple[Change, ...]) -> None:
     if console.width >= WIDE:
         _rows(console, [words.change_cells(change) for change in changes], words.CHANGE_HEADS)
         return
-    for what, holds, binding, used, junction, efficiency in map(words.change_cells, changes):
+    for what, holds, binding, used, junction, efficiency, damage in map(words.change_cells, changes):
         numbers = {f"at {used}": used, f"hottest junction {junction}": junction, f"efficiency {efficiency}": efficiency}
+        numbers[f"damage {damage}"] = damage
         told = ", ".join([binding, *(text for text, number in numbers.items() if number != "-")])
         _list(console, [f"{what}: {holds}; {told}"])
 

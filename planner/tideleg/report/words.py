@@ -6,6 +6,7 @@ from tideleg.coverage import flagged
 from tideleg.limits import LimitCheck
 from tideleg.outcome import Change, Coarser, CoolantLoss, GradeEntry, MissionResult, Outcome, PackAnswer
 from tideleg.plan import GRADES
+from tideleg.report.wear_words import life_answer
 from tideleg.verdict import quantity_text
 
 LIMIT_HEADS = ("limit", "found", "allowed", "margin", "in use", "at", "verdict")
@@ -21,7 +22,7 @@ PACK_HEADS = (
     "state of charge at the end",
     "lost in the pack",
 )
-CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency")
+CHANGE_HEADS = ("change", "verdict", "then binds", "in use", "hottest junction", "efficiency", "damage")
 BROKEN = "DOES NOT HOLD"
 
 GUESS_MATTERS = 0.01
@@ -93,6 +94,7 @@ def change_cells(change: Change) -> tuple[str, ...]:
         share_text(change.used),
         "-" if change.greatest_junction_degc is None else f"{change.greatest_junction_degc:.1f} degC",
         "-" if change.efficiency is None else efficiency_text(change.efficiency),
+        "-" if change.damage is None else f"{change.damage:.3g} times",
     )
 
 
@@ -130,6 +132,7 @@ def answers(outcome: Outcome) -> list[tuple[str, str]]:
         ("Does it do the mission?", sentence(outcome.verdict)),
         ("With what margin?", _margin_answer(outcome)),
         ("What binds, and when?", _binding_answer(outcome)),
+        ("How long does it last?", life_answer(outcome)),
         ("What would change the answer?", _change_answer(outcome)),
         ("How sure is it?", _sure_answer(outcome)),
     ]
@@ -207,7 +210,7 @@ def closure(outcome: Outcome) -> float:
     return max(max(abs(e.residual), abs(e.recomputed_residual)) for e in energies)
 
 
-RESOLVED_SHARE, RESOLVED_K = 0.01, 1.0
+RESOLVED_SHARE, RESOLVED_K, RESOLVED_DAMAGE = 0.01, 1.0, 0.1
 """A merged profile that moves the answer by more than this share or this many kelvin was needed as fine as it is."""
 
 
@@ -277,8 +280,12 @@ def _resolution(one: Coarser) -> str:
     if one.greatest_junction_change_k is not None:
         moves.append(f"the hottest junction by {one.greatest_junction_change_k:+.2f} K")
         strong = strong or abs(one.greatest_junction_change_k) > RESOLVED_K
+    if one.damage_change is not None:
+        moves.append(f"the damage by temperature by {100.0 * one.damage_change:+.0f} %")
+        strong = strong or abs(one.damage_change) > RESOLVED_DAMAGE
     verdict = "the profile's own steps limit this answer" if strong else "the profile resolves this answer"
-    return f"with every {one.merged} steps merged {' and '.join(moves)}: {verdict}"
+    told = f"{', '.join(moves[:-1])} and {moves[-1]}" if len(moves) > 1 else moves[0]
+    return f"with every {one.merged} steps merged {told}: {verdict}"
 
 
 def all_rules(outcome: Outcome) -> list[str]:

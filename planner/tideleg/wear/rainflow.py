@@ -147,19 +147,20 @@ _Pairs = list[tuple[_Points, _Points]]
 def _close(points: _Points) -> tuple[_Pairs, _Points]:
     """Return the closed pairs and the residue of turning points.
 
-    Pairs whose range is smaller than both neighbours' close whatever the order, and those of one pass never touch: all
-    are removed at once. Removing them only makes neighbouring ranges greater, so the order of passes is free as well.
-    Equal ranges do depend on order; they and what else is left go through a plain stack, from the left.
+    A pair whose range is smaller than the one before and no greater than the one after closes whatever the order, and
+    such pairs never touch: all are removed at once. Removing them only makes neighbouring ranges greater, so the order
+    of passes is free as well. A range equal to the one before does depend on order; such ranges, and what else is
+    left, go through a plain stack, from the left.
     """
     pairs: _Pairs = []
     while len(points.time) >= 4:
         ranges = np.abs(np.diff(points.value))
-        strict = np.flatnonzero((ranges[1:-1] < ranges[:-2]) & (ranges[1:-1] < ranges[2:])) + 1
-        if len(strict) * WORTHWHILE < len(points.time):
+        closing = np.flatnonzero((ranges[1:-1] < ranges[:-2]) & (ranges[1:-1] <= ranges[2:])) + 1
+        if len(closing) * WORTHWHILE < len(points.time):
             break
-        pairs.append((points.chosen(strict), points.chosen(strict + 1)))
+        pairs.append((points.chosen(closing), points.chosen(closing + 1)))
         keep = np.ones(len(points.time), dtype=bool)
-        keep[strict] = keep[strict + 1] = False
+        keep[closing] = keep[closing + 1] = False
         points = points.chosen(keep)
     begins, ends, kept = _by_stack(points.value.tolist())
     pairs.append((points.chosen(np.asarray(begins, dtype=np.int64)), points.chosen(np.asarray(ends, dtype=np.int64))))

@@ -1,6 +1,7 @@
 """Invented outcomes for the reports: a truck with four legs on a 750 V link, and the edges of what a run can find."""
 
 import dataclasses
+from itertools import pairwise
 
 import numpy as np
 import pandas as pd
@@ -11,6 +12,7 @@ from tideleg.limits import LimitCheck
 from tideleg.outcome import (
     BatteryEntry,
     Change,
+    Coarser,
     EnergyAccount,
     Inputs,
     LossEntry,
@@ -21,6 +23,8 @@ from tideleg.outcome import (
     Trace,
     WorstInstant,
 )
+from tideleg.wear import life_of, lifetime_quantile
+from tideleg.worn import Consumer, CycleTrace, DamageTrace, HeatHistory, PartWear, SwingBand, Wear
 
 FACTS = SafetyFacts(830.0, 453.0, 750.0, 830.0, 900e-6, 220e-6, 453.0, 0.055, 0.0006, 110e-6, 4, 165e3)
 SPLIT = {  # part, mechanism: share of the loss in discharge, charge, idle
@@ -229,7 +233,65 @@ def two_missions_outcome():
     return dataclasses.replace(whole, missions=(*whole.missions, second))
 
 
+def part_wear(part, model, damage, copies=1, heated=True, target=12.0, outside=0.0, missions=("kerbside",)):
+    """Wear of one part as a run would find it, with cycles drawn at random where it is heated."""
+    chance = np.random.default_rng(5)
+    swing = chance.exponential(9.0, 400) + 0.2
+    harm = swing**5.0 / np.sum(swing**5.0) * damage
+    beyond = (swing < np.quantile(swing, outside)).astype(float)
+    trace = CycleTrace(swing, 66.0 + 0.5 * swing, np.full(400, 2600.0), harm, beyond) if heated else None
+    edges = (0.0, 10.0, 20.0, 40.0, np.inf)
+    bands = tuple(SwingBand(a, b, 2600.0, 0.25) for a, b in pairwise(edges)) if heated else ()
+    reached = lifetime_quantile(damage, 0.5, 0.1, copies, 0.25)
+    each = damage / len(missions)
+    passes = {"kerbside": 2600.0, "depot/../night & day": 300.0}
+    return PartWear(
+        part=part, model=model, mechanism="bond wires <and> solder", heated=heated, copies=copies,
+        damage_per_year=damage, damage_per_pass={m: each / passes[m] for m in missions},
+        life=life_of(damage, 0.5, 1, 0.25), first_life=life_of(damage, 0.5, copies, 0.25), spread=0.5, load_spread=0.25,
+        life_at_target_years=reached, target_years=target, target_failures=0.1,
+        margin_years=None if target is None else reached - target, outside_share=outside,
+        box="swing 30 to 80 K, mean 60 to 100 degC", bands=bands, cycles=trace,
+        along={m: DamageTrace(np.linspace(0, 2000, 21), np.linspace(0, each / passes[m], 21)) for m in missions},
+    )  # fmt: skip
+
+
+def heat_history(part, hot):
+    hours = (200.0, 900.0, 600.0, 30.0)
+    return HeatHistory(
+        part=part, greatest_degc=96.5, mean_degc=70.9, greatest_swing_k=31.5, cycles_per_year=6.7e6,
+        hours_per_year=1730.0, band_edges_degc=(60.0, 70.0, 80.0, 90.0, 100.0), band_hours=hours,
+        swing_edges_k=(0.0, 5.0, 10.0, 20.0, 30.0, 40.0, 60.0, 80.0, np.inf),
+        swing_counts=(6.5e6, 4e4, 8e4, 7e4, 2600.0, 0.0, 0.0, 12.0), hot_above_degc=hot,
+        hot_hours=None if hot is None else 0.0,
+    )  # fmt: skip
+
+
+def worn_outcome(two=False):
+    whole = two_missions_outcome() if two else truck_outcome()
+    missions = tuple(m.name for m in whole.missions)
+    parts = (
+        part_wear("coolant_pump", "running-hours", 0.029, heated=False, missions=missions),
+        part_wear("lower_switch", "coffin-manson-arrhenius", 0.0067, copies=8, outside=0.9, missions=missions),
+        part_wear("upper_switch", "coffin-manson-arrhenius", 1.6e-4, copies=8, target=None, missions=missions),
+        part_wear("spare", "running-hours", 0.0, heated=False, missions=missions),
+    )
+    consumers = tuple(
+        Consumer("lower_switch", "bond wires", "kerbside", 12.0 * i, 12.0 * i + 12.0, 1e-4, 0.015) for i in range(20)
+    )
+    heat = (heat_history("lower_switch", 100.0), heat_history("inductor", None))
+    wear = Wear("repeating: the history repeats", heat, parts, consumers)
+    changes = (
+        dataclasses.replace(whole.changes[0], damage=1.87),
+        dataclasses.replace(whole.changes[0], what="3 chips in parallel instead of 2", damage=0.054),
+    )
+    coarser = (Coarser(2, 1e-4, -0.02, -0.05), Coarser(5, 1e-4, None, -0.19))
+    return dataclasses.replace(whole, wear=wear, changes=(*changes, *whole.changes[1:]), coarser=coarser)
+
+
 OUTCOMES = {
+    "worn": worn_outcome,
+    "worn-two-missions": lambda: worn_outcome(True),
     "truck": truck_outcome,
     "failing": failing_outcome,
     "one-step": one_step_outcome,
@@ -241,6 +303,11 @@ OUTCOMES = {
 @pytest.fixture(scope="session")
 def truck():
     return truck_outcome()
+
+
+@pytest.fixture(scope="session")
+def worn():
+    return worn_outcome()
 
 
 @pytest.fixture(scope="session")

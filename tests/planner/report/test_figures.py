@@ -140,3 +140,26 @@ def test_losses_by_direction_add_up_to_the_losses_by_mechanism(outcome):
 def test_nothing_goes_through_the_shared_state_of_pyplot(truck):
     draw_all(truck)
     assert "matplotlib.pyplot" not in sys.modules
+
+
+def test_wear_has_its_pictures_and_the_shares_of_the_matrix_are_those_of_the_damage(worn):
+    pictures = draw_all(worn)
+    assert {"hours", "cycles", "damage", "life"} <= set(pictures)
+    written = [int(text.get_text()) for text in pictures["cycles"].figure.axes[0].texts]
+    assert 80 <= sum(written) <= 101
+    assert "swing 30 to 80 K" in pictures["cycles"].caption
+
+
+def test_the_curves_of_life_pass_through_what_is_written(worn):
+    axes = draw_all(worn)["life"].figure.axes[0]
+    curve, dots = axes.get_lines()[:2]
+    life = worn.wear.worst_heated.life
+    assert list(dots.get_xdata()) == [life.p10, life.p50, life.p90]
+    np.testing.assert_allclose(
+        np.interp([10, 50, 90], curve.get_ydata(), curve.get_xdata()), dots.get_xdata(), rtol=1e-6
+    )
+
+
+def test_damage_along_time_ends_at_the_whole_of_one_mission(worn):
+    axes = draw_all(worn)["damage"].figure.axes[0]
+    assert all(line.get_ydata()[-1] == pytest.approx(100.0) for line in axes.get_lines())

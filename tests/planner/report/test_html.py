@@ -9,6 +9,7 @@ import pytest
 
 from tideleg.report.drawing import Picture
 from tideleg.report.html import danger_rows, render_html
+from tideleg.worn import NO_WEAR
 
 PNG = b"\x89PNG\r\n\x1a\n"
 
@@ -132,3 +133,20 @@ def test_repeated_data_of_parts_are_referred_to(truck):
     upper = dataclasses.replace(truck.parts[0], name="upper_switch")
     both = dataclasses.replace(truck, parts=(truck.parts[0], upper))
     assert "as lower switch" in Page(render_html(both, {})).text
+
+
+def test_wear_stands_in_tables_part_by_part(worn):
+    page = Page(render_html(worn, pictures_of(worn)))
+    for part in worn.wear.parts:
+        assert part.model in page.text
+    for said in (
+        "no end",
+        "P10 / P50 / P90",
+        "Stretches of the missions that consume most",
+        "31.5 K",
+        "0-5 K: 6,500,000",
+    ):
+        assert said in page.text, said
+    assert (
+        "no life model" in Page(render_html(worn.__class__(**{**vars(worn), "wear": NO_WEAR}), pictures_of(worn))).text
+    )

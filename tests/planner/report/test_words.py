@@ -72,3 +72,28 @@ def test_instants_of_a_long_schedule_keep_their_digits():
 @pytest.mark.parametrize("given", ["holds", "holds.", "Holds."])
 def test_a_sentence_has_one_capital_and_one_stop(given):
     assert words.sentence(given) == "Holds."
+
+
+def test_how_long_it_lasts_is_a_spread_with_its_margin_and_never_one_number(worn, bare):
+    told = answer(worn, "How long does it last?")
+    assert told.startswith("Coolant pump limits it (running-hours): P10 / P50 / P90 ")
+    assert "more than the target of 12 years" in told
+    assert "Lower switch is what temperature wears most (coffin-manson-arrhenius, first of 8)" in told
+    assert "90 % of its damage lies outside the data" in told
+    assert "Damage at least halves with: 3 chips in parallel instead of 2 (0.054 times)." in told
+    assert "no life model" in answer(bare, "How long does it last?")
+
+
+def test_a_missed_target_and_a_change_that_breaks_limits_are_said(worn):
+    short = dataclasses.replace(worn.wear.parts[0], life_at_target_years=7.0, margin_years=-5.0)
+    changes = (dataclasses.replace(worn.changes[0], damage=0.3, holds=False),)
+    wear = dataclasses.replace(worn.wear, parts=(short,))
+    told = answer(dataclasses.replace(worn, wear=wear, changes=changes), "How long does it last?")
+    assert "7 years at 10 % failed, 5 SHORT of the target of 12 years" in told
+    assert "(0.3 times, but limits break)" in told
+
+
+def test_a_profile_too_coarse_for_the_damage_is_told_even_where_currents_stand_still(worn):
+    fine, coarse = words.sureness(worn)[-3:-1] if worn.warnings else words.sureness(worn)[-2:]
+    assert "damage by temperature by -5 %: the profile resolves this answer" in fine
+    assert "damage by temperature by -19 %: the profile's own steps limit this answer" in coarse

@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 
 from tideleg.stress import Cycles
 from tideleg.wear import RESIDUE_RULES, CycleCount, count_cycles, turning_points
+from tideleg.wear import rainflow as rainflow_module
 from tideleg.wear.rainflow import joined_cycles
 
 TIED = st.lists(st.integers(-4, 4), min_size=2, max_size=60)
@@ -177,3 +178,13 @@ def test_a_spiral_that_closes_one_cycle_a_pass_still_ends_soon():
     history = np.append(down * np.where(np.arange(20000) % 2, -1.0, 1.0), 3e4)
     found = counted(history, "half_cycles")
     assert found.weight.sum() == pytest.approx(10000.0)
+
+
+@pytest.mark.parametrize("seed", range(20))
+def test_passes_and_the_plain_stack_find_the_same_pairs_also_among_equal_ranges(seed):
+    history = np.random.default_rng(seed).integers(-4, 5, size=600).astype(float)
+    points = turning_points(history)
+    begins, ends, _ = rainflow_module._by_stack(history[points].tolist())
+    found = counted(history, "closed_only")
+    by_stack = sorted(zip(points[begins].tolist(), points[ends].tolist(), strict=True))
+    assert sorted(zip(found.begin.tolist(), found.end.tolist(), strict=True)) == by_stack
