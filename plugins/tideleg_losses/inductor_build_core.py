@@ -18,6 +18,9 @@ WIDEST_GAP = 0.5
 
 HALVINGS = 80
 
+HIGHEST_FIELD = 1e9
+"""Far above what any core meets [A/m]."""
+
 
 @dataclass(frozen=True)
 class CoreShape:
@@ -116,17 +119,27 @@ def gap_for(core: CoreShape, turns: float, wanted: float) -> float:
     InputError
         If even no gap gives too little, or the widest gap too much.
     """
-    most, least = float(inductance(core, turns)), float(inductance(core, turns, WIDEST_GAP * core.window_height))
-    if not least <= wanted <= most:
+    gap = float(gaps_for(core, turns, wanted))
+    if np.isnan(gap):
+        most, least = (float(inductance(core, turns, g)) for g in (0.0, WIDEST_GAP * core.window_height))
         raise InputError(
             f"{core.name}: {turns:g} turns give from {1e6 * least:.4g} uH (widest gap) to {1e6 * most:.4g} uH (no gap),"
             f" not {1e6 * wanted:.4g} uH"
         )
+    return gap
+
+
+def gaps_for(core: CoreShape, turns: Values, wanted: Values) -> FloatArray:
+    """Return the gap for each number of turns and wanted inductance, which broadcast [m]; NaN where there is none."""
+    widest = WIDEST_GAP * core.window_height
+    shape = np.broadcast_shapes(np.shape(turns), np.shape(wanted))
 
     def too_much(gap: FloatArray) -> FloatArray:
         return np.asarray(inductance(core, turns, gap) - wanted)
 
-    return float(_halve(too_much, np.zeros(()), np.asarray(WIDEST_GAP * core.window_height)))
+    gap = _halve(too_much, np.zeros(shape), np.full(shape, widest))
+    possible = (inductance(core, turns, widest) <= wanted) & (inductance(core, turns) >= wanted)
+    return np.where(possible, gap, np.nan)
 
 
 def magnetize(core: CoreShape, turns: Values, gap: Values, current: Values) -> Magnetized:
@@ -169,17 +182,21 @@ def saturation_current(core: CoreShape, turns: float, gap: float, share: float =
     """
     if not 0.0 < share < 1.0:
         raise InputError(f"share of inductance: found {share:g}; give one between 0 and 1")
-    full = float(inductance(core, turns, gap))
-    most = 1.0
-    while float(magnetize(core, turns, gap, most).differential_inductance) > share * full:
-        most *= 2.0
-        if most > 1e9:
-            raise InputError(f"{core.name}: the inductance never falls to {share:g} of {1e6 * full:.4g} uH")
+    spread = float(effective_gap(core, gap)) / VACUUM_PERMEABILITY
+    at_rest = float(core.law.slope(0.0))
 
-    def too_much(current: FloatArray) -> FloatArray:
-        return np.asarray(magnetize(core, turns, gap, current).differential_inductance - share * full)
+    def too_much(field: FloatArray) -> FloatArray:
+        slope = core.law.slope(field)
+        left = slope / (core.path_length + spread * slope)
+        return np.asarray(left - share * at_rest / (core.path_length + spread * at_rest))
 
-    return float(_halve(too_much, np.zeros(()), np.asarray(most)))
+    highest = 1.0
+    while float(too_much(np.asarray(highest))) > 0.0:
+        highest *= 2.0
+        if highest > HIGHEST_FIELD:
+            raise InputError(f"{core.name}: the inductance never falls to {share:g} of that at zero current")
+    field = _halve(too_much, np.zeros(()), np.asarray(highest))
+    return float((field * core.path_length + core.law.flux_density(field) * spread) / turns)
 
 
 def _halve(positive_below: Callable[[FloatArray], FloatArray], low: FloatArray, high: FloatArray) -> FloatArray:

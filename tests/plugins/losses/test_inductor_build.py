@@ -17,7 +17,7 @@ from tideleg import InputError
 from tideleg_losses.core import CoreSettings
 from tideleg_losses.gap import fringing_factor
 from tideleg_losses.inductor_build import InductorBuild
-from tideleg_losses.inductor_build_catalogue import capacitors, cores, wires
+from tideleg_losses.inductor_build_catalogue import FOLDER, capacitors, cores, wires
 from tideleg_losses.inductor_build_core import (
     effective_gap,
     flux_density_of_linkage,
@@ -210,9 +210,8 @@ def test_porosity_of_a_full_layer_of_square_conductors_is_one() -> None:
 
 
 def test_the_catalogue_says_that_it_is_a_placeholder_and_reads() -> None:
-    folder = Path(__import__("tideleg_losses.inductor_build_catalogue", fromlist=["FOLDER"]).FOLDER)
     for name in ("cores", "wires", "capacitors"):
-        assert 'grade = "placeholder"' in (folder / f"{name}.toml").read_text()
+        assert 'grade = "placeholder"' in (FOLDER / f"{name}.toml").read_text()
     assert {c.may_be_gapped for c in cores()} == {True, False}
     assert {w.kind for w in wires()} == {"round", "foil", "litz"}
     assert {c.kind for c in capacitors()} == {"film", "electrolytic"}
