@@ -88,7 +88,7 @@ def reach(plan: Plan | str | Path, *, registry: Registry | None = None) -> tuple
     stage, battery = build_stage(plan, registry), battery_of(plan)
     found = []
     for index, table in enumerate(plan.mission):
-        profile = profile_of(plan, table)
+        profile = profile_of(plan, table, registry)
         found.append(reach_of(stage, battery, demand_of(plan, index, profile, stage), profile.name))
     return tuple(found)
 

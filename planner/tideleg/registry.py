@@ -15,13 +15,18 @@ from typing import Any, NamedTuple, TypeVar
 
 import pluggy
 
-from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, Topology
+from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, ProfileSource, Topology
 from tideleg.errors import PluginError
 
-KINDS: dict[str, type] = {"topology": Topology, "loss_model": LossModel, "cooling_model": CoolingModel}
+KINDS: dict[str, type] = {
+    "topology": Topology,
+    "loss_model": LossModel,
+    "cooling_model": CoolingModel,
+    "profile_source": ProfileSource,
+}
 """Hook name -> what it must offer."""
 
-KIND_WORDS = {"topology": "topology", "loss_model": "loss", "cooling_model": "cooling"}
+KIND_WORDS = {"topology": "topology", "loss_model": "loss", "cooling_model": "cooling", "profile_source": "profile"}
 
 Offer = TypeVar("Offer")
 
@@ -30,7 +35,7 @@ class Plugin(NamedTuple):
     """One thing that a plugin offers.
 
     name : its own name, unique within its kind
-    kind : "topology", "loss" or "cooling"
+    kind : "topology", "loss", "cooling" or "profile"
     offer : the object itself
     module, distribution, version : where it came from
     """
@@ -79,6 +84,15 @@ class Registry:
         """Return the cooling model of that name; raises PluginError as `topology` does."""
         found: CoolingModel = self._named("cooling", name)
         return found
+
+    def profile_source(self, name: str) -> ProfileSource:
+        """Return the profile source of that name; raises PluginError as `topology` does."""
+        found: ProfileSource = self._named("profile", name)
+        return found
+
+    def profile_sources(self) -> tuple[ProfileSource, ...]:
+        """Return every profile source, by name."""
+        return tuple(p.offer for p in self.plugins if p.kind == "profile")
 
     def topologies(self) -> tuple[Topology, ...]:
         """Return every topology, by name."""

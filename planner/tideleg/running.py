@@ -96,12 +96,15 @@ def run(
     stage = build_stage(plan, registry)
     battery = battery_of(plan)
     _refuse_twin_missions(plan)
-    runs = [_run_mission(plan, index, stage, battery, merged_steps, progress) for index in range(len(plan.mission))]
+    runs = [
+        _run_mission(plan, index, stage, battery, merged_steps, progress, registry)
+        for index in range(len(plan.mission))
+    ]
     return _outcome(plan, stage, battery, {r.result.name: r for r in runs})
 
 
 def _refuse_twin_missions(plan: Plan) -> None:
-    names = [mission.name or Path(mission.profile).stem for mission in plan.mission]
+    names = [mission.label for mission in plan.mission]
     for index, name in enumerate(names):
         if name in names[:index]:
             what = f"two missions are named {name!r}; give one of them a name of its own, such as name = 'winter'"
@@ -109,10 +112,16 @@ def _refuse_twin_missions(plan: Plan) -> None:
 
 
 def _run_mission(
-    plan: Plan, index: int, stage: Stage, battery: Battery, merged_steps: int, progress: Progress | None
+    plan: Plan,
+    index: int,
+    stage: Stage,
+    battery: Battery,
+    merged_steps: int,
+    progress: Progress | None,
+    registry: Registry | None,
 ) -> MissionRun:
     table = plan.mission[index]
-    profile = profile_of(plan, table)
+    profile = profile_of(plan, table, registry)
     profile = profile if merged_steps == 1 else coarsened(profile, merged_steps)
     demand = demand_of(plan, index, profile, stage)
     refuse_impossible_power(battery, demand, profile.name)

@@ -19,5 +19,6 @@ def execute(given: argparse.Namespace) -> int:
     from tideleg.registry import installed
 
     registry = installed()
-    print(json.dumps(plan_schema(registry.topologies(), registry.loss_models(), registry.cooling_models()), indent=2))
+    plugins = (registry.topologies(), registry.loss_models(), registry.cooling_models(), registry.profile_sources())
+    print(json.dumps(plan_schema(*plugins), indent=2))
     return 0

@@ -13,6 +13,7 @@ command line: `tideleg plugins check NAME`.
 from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
 from tideleg.conformance.losses import loss_checks
+from tideleg.conformance.profiles import profile_checks
 from tideleg.conformance.topologies import topology_checks
 
-__all__ = ["Check", "cooling_checks", "loss_checks", "topology_checks"]
+__all__ = ["Check", "cooling_checks", "loss_checks", "profile_checks", "topology_checks"]

@@ -10,8 +10,9 @@ from pydantic import BaseModel, ValidationError
 from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
 from tideleg.conformance.losses import loss_checks
+from tideleg.conformance.profiles import profile_checks
 from tideleg.conformance.topologies import topology_checks
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology
 from tideleg.errors import InputError
 from tideleg.plan import Plan
 from tideleg.quantity import parse
@@ -52,8 +53,10 @@ def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
         yield from _topology(offer, plan)
     elif plugin.kind == "loss":
         yield from _loss(offer, plan)
-    else:
+    elif plugin.kind == "cooling":
         yield from _cooling(offer, plan)
+    else:
+        yield from _profile(offer, plan)
 
 
 def _topology(topology: Topology, plan: Plan) -> Iterator[Check]:
@@ -106,6 +109,23 @@ def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
         for table in TABLES[kind]:
             parts[kind] = parts.get(kind) or _own(plan.stage.parts.get(table, {}), keys)
     yield from cooling_checks(model, own, parts)
+
+
+def _profile(source: ProfileSource, plan: Plan) -> Iterator[Check]:
+    """Take the keys of the first mission that names the source.
+
+    Raises
+    ------
+    InputError
+        If no mission of the plan names it: a source has no data of its own to be checked with.
+    """
+    named = [mission.source_settings for mission in plan.mission if mission.source == source.name]
+    if not named:
+        raise InputError(
+            f"{plan.file or plan.title} has no mission with source = {source.name!r}, whose keys a check needs;"
+            " name a plan that has: tideleg plugins check NAME --plan PLAN"
+        )
+    yield from profile_checks(source, named[0], plan.folder)
 
 
 def _own(given: Mapping[str, Any], model: type[BaseModel]) -> dict[str, object]:

@@ -7,7 +7,7 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology, read_as
 from tideleg.plan.tables import CapacitorBase, InductorBase, Plan, SwitchBase, TransformerBase
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {
@@ -27,7 +27,10 @@ _CURVE = {
 
 
 def plan_schema(
-    topologies: Sequence[Topology], loss_models: Sequence[LossModel], cooling_models: Sequence[CoolingModel]
+    topologies: Sequence[Topology],
+    loss_models: Sequence[LossModel],
+    cooling_models: Sequence[CoolingModel],
+    profile_sources: Sequence[ProfileSource] = (),
 ) -> dict[str, Any]:
     """Return the JSON Schema (draft 2020-12) of a plan, with the keys of every plugin in its place."""
     schema = Plan.model_json_schema()
@@ -37,6 +40,7 @@ def plan_schema(
     definitions.pop("Curve", None)
     definitions["StageTable"] = _stage(topologies, loss_models, cooling_models)
     definitions["CoolingTable"] = _cooling(cooling_models)
+    _sources(definitions["MissionTable"], profile_sources)
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
 
 
@@ -86,6 +90,32 @@ def _cooling(cooling_models: Sequence[CoolingModel]) -> dict[str, Any]:
     for model in cooling_models:
         keys |= _properties(model.settings)
     return {"type": "object", "properties": keys, "additionalProperties": False}
+
+
+def _sources(mission: dict[str, Any], sources: Sequence[ProfileSource]) -> None:
+    """Put into [[mission]] which sources there are, and the keys of each beside its name."""
+    mission["oneOf"] = [{"required": ["profile"]}, {"required": ["source"]}]
+    if not sources:
+        return
+    mission["properties"]["source"] = {"enum": [source.name for source in sources]}
+    mission["properties"]["source_settings"] = {"type": "object"}
+    mission["allOf"] = [
+        {
+            "if": {"properties": {"source": {"const": one.name}}, "required": ["source"]},
+            "then": {"properties": {"source_settings": _settings(one.settings)}},
+        }
+        for one in sources
+    ]
+
+
+def _settings(model: type[BaseModel]) -> dict[str, Any]:
+    required = model.model_json_schema().get("required", [])
+    return {
+        "type": "object",
+        "properties": _properties(model),
+        "required": required,
+        "additionalProperties": False,
+    }
 
 
 def _properties(model: type[BaseModel]) -> dict[str, Any]:

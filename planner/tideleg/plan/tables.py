@@ -226,9 +226,11 @@ class CapacitorBase(Table):
 
 
 class MissionTable(Table):
-    """One [[mission]]."""
+    """One [[mission]]: its profile is a file, or comes from a profile source with the keys of source_settings."""
 
-    profile: str
+    profile: str | None = None
+    source: str | None = None
+    source_settings: dict[str, Any] = {}
     name: str | None = None
     passes_per_year: float = Field(default=1.0, gt=0.0)
     terminals: Literal["link", "battery"] = "link"
@@ -238,6 +240,23 @@ class MissionTable(Table):
     ambient: q.Temperature | None = None
     battery_temperature: q.Temperature | None = None
     start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
+
+    @model_validator(mode="after")
+    def _one_origin(self) -> Self:
+        if (self.profile is None) == (self.source is None):
+            found = "neither" if self.profile is None else "both"
+            raise ValueError(f"found {found} of profile and source; give exactly one: a file, or a profile source")
+        if self.source is None and self.source_settings:
+            raise ValueError("source_settings stands without source; name the source, or remove its settings")
+        idle = sorted({"interpolation", "sign"} & self.model_fields_set)
+        if self.source is not None and idle:
+            raise ValueError(f"{idle[0]} tells how a profile file is read; a source states its own: remove it")
+        return self
+
+    @property
+    def label(self) -> str:
+        """The name in every output: as given, or the stem of the file, or the name of the source."""
+        return self.name or (Path(self.profile).stem if self.profile is not None else str(self.source))
 
 
 class Plan(Table):
