@@ -475,6 +475,13 @@ class ProfileSource(Protocol):
         """Those of its keys that hold names of files, relative to the folder of the plan."""
         ...
 
+    def example(self, folder: Path) -> Mapping[str, object]:
+        """Write the input files of a small example into an empty folder and return its keys.
+
+        `tideleg plugins check` holds the source against its promises with it where the plan has no mission of it.
+        """
+        ...
+
     def make(self, settings: Any, folder: Path) -> MadeProfile:
         """Return the profile; the same for the same settings and files, byte for byte.
 

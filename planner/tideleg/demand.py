@@ -106,6 +106,7 @@ def vehicle_of(plan: Plan) -> Vehicle | None:
         drivetrain_efficiency=v.drivetrain_efficiency,
         regeneration_limit_w=v.regeneration_limit,
         regeneration_share=v.regeneration_share,
+        regeneration_fade_m_s=v.regeneration_fade,
         auxiliary_power_w=v.auxiliary_power,
     )
 

@@ -8,6 +8,7 @@ method: Shinozuka, Deodatis, Applied Mechanics Reviews 44(4), 1991, 191-204 (fro
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, Self
@@ -70,6 +71,11 @@ class Duty:
     source: str = "random phases on S(f) = 1/(1 + (f/f_c)^2); Shinozuka, Deodatis 1991 (from memory)"
     settings: type[BaseModel] = DutySettings
     file_keys: tuple[str, ...] = ()
+
+    def example(self, folder: Path) -> Mapping[str, object]:
+        """Write the files of a small example and return its keys."""
+        spectrum = {"rms_power": "20 kW", "corner_frequency": "10 mHz", "seed": 7}
+        return {"duration": "1 h", "step": "2 s", **spectrum}
 
     def make(self, settings: DutySettings, folder: Path) -> MadeProfile:
         """Return the synthetic power."""

@@ -6,6 +6,7 @@ power), or a published curve of straight lines from deviation to share of rated 
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from itertools import pairwise
 from pathlib import Path
@@ -90,6 +91,12 @@ class FrequencyResponse:
     source: str = "P/P_rated = -(f - f_n)/(droop f_n) outside the dead band, at most 1; or a published curve"
     settings: type[BaseModel] = FrequencyResponseSettings
     file_keys: tuple[str, ...] = ("frequency",)
+
+    def example(self, folder: Path) -> Mapping[str, object]:
+        """Write the files of a small example and return its keys."""
+        text = "time_s,frequency_hz\n0,49.95\n10,50.02\n20,50\n"
+        (folder / "frequency.csv").write_text(text, encoding="utf-8")
+        return {"frequency": "frequency.csv", "rated_power": "1 MW", "dead_band": "10 mHz", "droop": "0.4 %"}
 
     def make(self, settings: FrequencyResponseSettings, folder: Path) -> MadeProfile:
         """Return the requested power over the frequency series."""

@@ -8,6 +8,7 @@ wall leaves.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, NamedTuple, Self
@@ -82,6 +83,12 @@ class PeakShaving:
     source: str = "load above a threshold from the storage; stored energy is the running sum between its bounds"
     settings: type[BaseModel] = PeakShavingSettings
     file_keys: tuple[str, ...] = ("load",)
+
+    def example(self, folder: Path) -> Mapping[str, object]:
+        """Write the files of a small example and return its keys."""
+        (folder / "load.csv").write_text("time_s,load_kw\n0,50\n60,90\n120,55\n300,0\n", encoding="utf-8")
+        limits = {"discharge_limit": "50 kW", "charge_limit": "20 kW"}
+        return {"load": "load.csv", "threshold": "60 kW", "storage_energy": "2 kWh", **limits}
 
     def make(self, settings: PeakShavingSettings, folder: Path) -> MadeProfile:
         """Return the storage's power over the load series."""

@@ -8,6 +8,7 @@ tau the stored energy is drawn back to where it began: P = g - s + (E - E_start)
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, NamedTuple, Self
@@ -106,6 +107,11 @@ class SolarSmoothing:
     source: str = "ramp limit or mean over a window on the feed-in; first-order return of the stored energy"
     settings: type[BaseModel] = SolarSmoothingSettings
     file_keys: tuple[str, ...] = ("solar",)
+
+    def example(self, folder: Path) -> Mapping[str, object]:
+        """Write the files of a small example and return its keys."""
+        (folder / "solar.csv").write_text("time_s,solar_kw\n0,0\n60,30\n120,8\n300,20\n400,0\n", encoding="utf-8")
+        return {"solar": "solar.csv", "window": "10 min", "storage_energy": "20 kWh", "return_time": "2 h"}
 
     def make(self, settings: SolarSmoothingSettings, folder: Path) -> MadeProfile:
         """Return the storage's power over the solar series."""

@@ -112,20 +112,9 @@ def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
 
 
 def _profile(source: ProfileSource, plan: Plan) -> Iterator[Check]:
-    """Take the keys of the first mission that names the source.
-
-    Raises
-    ------
-    InputError
-        If no mission of the plan names it: a source has no data of its own to be checked with.
-    """
+    """Take the keys of the first mission that names the source, or the source's own example."""
     named = [mission.source_settings for mission in plan.mission if mission.source == source.name]
-    if not named:
-        raise InputError(
-            f"{plan.file or plan.title} has no mission with source = {source.name!r}, whose keys a check needs;"
-            " name a plan that has: tideleg plugins check NAME --plan PLAN"
-        )
-    yield from profile_checks(source, named[0], plan.folder)
+    yield from profile_checks(source, (named[0], plan.folder) if named else None)
 
 
 def _own(given: Mapping[str, Any], model: type[BaseModel]) -> dict[str, object]:

@@ -156,7 +156,10 @@ class LimitsTable(Table):
 
 
 class VehicleTable(Table):
-    """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2."""
+    """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2.
+
+    regeneration_fade : speeds at or below which nothing is taken back, and at or above which the whole share is
+    """
 
     mass: Annotated[q.Mass, Positive]
     rotating_mass_factor: float = Field(default=1.03, ge=1.0)
@@ -169,7 +172,18 @@ class VehicleTable(Table):
     drivetrain_efficiency: Annotated[q.Share, Field(gt=0.0, le=1.0)] = 1.0
     regeneration_limit: Annotated[q.Power, NotNegative] | None = None
     regeneration_share: Annotated[q.Share, Field(ge=0.0, le=1.0)] = 1.0
+    regeneration_fade: tuple[Annotated[q.Speed, NotNegative], Annotated[q.Speed, NotNegative]] | None = None
     auxiliary_power: Annotated[q.Power, NotNegative] = 0.0
+
+    @model_validator(mode="after")
+    def _fades_upward(self) -> Self:
+        fade = self.regeneration_fade
+        if fade is not None and fade[0] >= fade[1]:
+            raise ValueError(
+                f"regeneration_fade: found [{fade[0]:g}, {fade[1]:g}] m/s; give the speed without regeneration first,"
+                " then the higher one from which on it is whole, such as ['5 km/h', '15 km/h']"
+            )
+        return self
 
     @model_validator(mode="after")
     def _one_form(self) -> Self:

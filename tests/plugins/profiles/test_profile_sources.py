@@ -50,7 +50,7 @@ def folder(tmp_path):
 
 @pytest.mark.parametrize("name", KEYS)
 def test_contract(name, folder):
-    for check in profile_checks(installed().profile_source(name), KEYS[name], folder):
+    for check in profile_checks(installed().profile_source(name), (KEYS[name], folder)):
         check()
 
 
@@ -213,3 +213,34 @@ def test_a_series_is_taken_as_it_stands_or_refused(tmp_path, text, message):
     path.write_text(text)
     with pytest.raises(ProfileError, match=message):
         read_series(path, {"load_w": 1.0, "load_kw": 1e3})
+
+
+class Spoiled:
+    """A source whose table or settings are spoiled."""
+
+    def __init__(self, name, **spoilt):
+        self._good, self._spoilt = installed().profile_source(name), spoilt
+
+    def __getattr__(self, key):
+        return self._spoilt.get(key, getattr(self._good, key))
+
+
+@pytest.mark.parametrize(
+    ("spoilt", "promise"),
+    [
+        (lambda made: made._replace(power_w=made.power_w * np.nan), "not finite"),
+        (lambda made: made._replace(power_w=made.power_w + np.random.default_rng().random()), "power_w differs"),
+        (lambda made: made._replace(files=()), "does not name them as read"),
+        (lambda made: made._replace(rules=()), "says nothing"),
+    ],
+)
+def test_a_broken_source_fails_with_the_promise(spoilt, promise):
+    good = installed().profile_source("peak-shaving")
+    bad = Spoiled("peak-shaving", make=lambda settings, folder: spoilt(good.make(settings, folder)))
+    said = []
+    for check in profile_checks(bad):
+        try:
+            check()
+        except AssertionError as error:
+            said.append(str(error))
+    assert any(promise in one for one in said)
