@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from tideleg import MadeProfile, PlanError, PluginError
-from tideleg.demand import profile_of
+from tideleg.demand import profile_of, vehicle_of
 from tideleg.facts import inputs_of
 from tideleg.plan import load_plan, plan_schema, write_plan
 from tideleg.registry import Plugin, Registry, installed
@@ -152,3 +152,29 @@ def test_the_schema_knows_the_keys_of_each_source():
     ):
         with pytest.raises(jsonschema.ValidationError):
             jsonschema.validate(bad, mission)
+
+
+def test_the_seed_of_a_duty_is_echoed_and_decides_the_table(plan_file):
+    text = """
+[[mission]]
+source = "duty"
+[mission.source_settings]
+duration = "10 min"
+step = "1 s"
+rms_power = "20 kW"
+corner_frequency = "10 mHz"
+seed = 3
+"""
+    one, other = (load_plan(plan_file(text.replace("seed = 3", f"seed = {seed}"))) for seed in (3, 4))
+    first, second = profile_of(one, one.mission[0]), profile_of(other, other.mission[0])
+    assert first.name == "duty"
+    assert any("seed 3" in rule for rule in first.rules)
+    assert first.sha256 != second.sha256
+
+
+def test_a_fade_of_regeneration_is_read_in_metres_a_second_and_its_order_is_checked(plan_file):
+    fade = '\n[vehicle]\nmass = "1500 kg"\ndrag_area = "0.7 m2"\nrolling_resistance = 0.012\nregeneration_fade = {}\n'
+    plan = load_plan(plan_file(SHAVING + fade.format('["5 km/h", "18 km/h"]')))
+    assert vehicle_of(plan).regeneration_fade_m_s == pytest.approx((5 / 3.6, 5.0))
+    with pytest.raises(PlanError, match="give the speed without regeneration first"):
+        load_plan(plan_file(SHAVING + fade.format('["18 km/h", "5 km/h"]')))
