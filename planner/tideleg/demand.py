@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from pathlib import Path
-
 import numpy as np
 
 from tideleg.battery import ALWAYS, Battery
 from tideleg.march import Demand
 from tideleg.mission import ROLES, Layout, Profile, Vehicle, read_profile
 from tideleg.plan import Curve, MissionTable, Plan
+from tideleg.registry import Registry
+from tideleg.sourced import sourced_profile
 from tideleg.stage import Stage
 from tideleg.waveform import FloatArray
 
@@ -71,17 +71,21 @@ def _or_infinite(limit: float | None) -> float:
     return np.inf if limit is None else limit
 
 
-def profile_of(plan: Plan, mission: MissionTable) -> Profile:
-    """Read the profile of one mission as the plan declares it.
+def profile_of(plan: Plan, mission: MissionTable, registry: Registry | None = None) -> Profile:
+    """Read the profile of one mission as the plan declares it, or have its source make it.
 
     Raises
     ------
     ProfileError
         If the file cannot be used; file, line and column are named.
+    PlanError
+        If the keys of the source cannot be used.
     """
+    if mission.profile is None:
+        return sourced_profile(plan, plan.mission.index(mission), registry)
     return read_profile(
         plan.folder / mission.profile,
-        name=mission.name or Path(mission.profile).stem,
+        name=mission.label,
         terminals=mission.terminals,
         interpolation=mission.interpolation,
         positive=mission.sign,
@@ -125,6 +129,7 @@ def vehicle_of(plan: Plan) -> Vehicle | None:
         drivetrain_efficiency=v.drivetrain_efficiency,
         regeneration_limit_w=v.regeneration_limit,
         regeneration_share=v.regeneration_share,
+        regeneration_fade_m_s=v.regeneration_fade,
         auxiliary_power_w=v.auxiliary_power,
     )
 

@@ -8,7 +8,7 @@ from collections.abc import Iterable, Mapping
 from importlib import metadata
 from pathlib import Path
 
-from tideleg.mission import Profile
+from tideleg.mission import Profile, SourcedProfile
 from tideleg.outcome import Inputs, PartEntry
 from tideleg.plan import Plan
 from tideleg.stage import Stage
@@ -81,7 +81,9 @@ def inputs_of(plan: Plan, profiles: Iterable[Profile]) -> Inputs:
     if plan.file is not None:
         sha256[plan.file.name] = file_sha256(plan.file)
     for profile in profiles:
-        sha256[profile.file.name if profile.file else profile.name] = profile.sha256
+        sha256[profile.file.name if profile.file else f"{profile.name}, table made by its source"] = profile.sha256
+        if isinstance(profile, SourcedProfile):
+            sha256 |= profile.files_sha256
     for extra in plan.extra_files:
         name = extra.name if extra.name not in sha256 else str(extra)
         sha256[name] = file_sha256(extra)

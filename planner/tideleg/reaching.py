@@ -88,7 +88,7 @@ def reach(plan: Plan | str | Path, *, registry: Registry | None = None) -> tuple
     stage = build_stage(plan, registry)
     found = []
     for index, table in enumerate(plan.mission):
-        profile = profile_of(plan, table)
+        profile = profile_of(plan, table, registry)
         found.append(reach_of(stage, battery_of(plan, table), demand_of(plan, index, profile, stage), profile.name))
     return tuple(found)
 

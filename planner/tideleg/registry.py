@@ -15,7 +15,7 @@ from typing import Any, NamedTuple, TypeVar
 
 import pluggy
 
-from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, Topology
+from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, ProfileSource, Topology
 from tideleg.errors import PluginError
 from tideleg.stress import LifeModel
 
@@ -24,10 +24,17 @@ KINDS: dict[str, type] = {
     "loss_model": LossModel,
     "cooling_model": CoolingModel,
     "life_model": LifeModel,
+    "profile_source": ProfileSource,
 }
 """Hook name -> what it must offer."""
 
-KIND_WORDS = {"topology": "topology", "loss_model": "loss", "cooling_model": "cooling", "life_model": "life"}
+KIND_WORDS = {
+    "topology": "topology",
+    "loss_model": "loss",
+    "cooling_model": "cooling",
+    "life_model": "life",
+    "profile_source": "profile",
+}
 
 Offer = TypeVar("Offer")
 
@@ -36,7 +43,7 @@ class Plugin(NamedTuple):
     """One thing that a plugin offers.
 
     name : its own name, unique within its kind
-    kind : "topology", "loss", "cooling" or "life"
+    kind : "topology", "loss", "cooling", "life" or "profile"
     offer : the object itself
     module, distribution, version : where it came from
     """
@@ -94,6 +101,15 @@ class Registry:
     def life_models(self) -> tuple[LifeModel, ...]:
         """Return every life model, by name."""
         return tuple(p.offer for p in self.plugins if p.kind == "life")
+
+    def profile_source(self, name: str) -> ProfileSource:
+        """Return the profile source of that name; raises PluginError as `topology` does."""
+        found: ProfileSource = self._named("profile", name)
+        return found
+
+    def profile_sources(self) -> tuple[ProfileSource, ...]:
+        """Return every profile source, by name."""
+        return tuple(p.offer for p in self.plugins if p.kind == "profile")
 
     def topologies(self) -> tuple[Topology, ...]:
         """Return every topology, by name."""

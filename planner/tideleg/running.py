@@ -94,22 +94,29 @@ def run(
     stage = build_stage(plan, registry)
     _refuse_twin_missions(plan)
     worn = bind_life(plan, stage)
-    runs = [_run_mission(plan, index, stage, merged_steps, progress) for index in range(len(plan.mission))]
+    runs = [_run_mission(plan, index, stage, merged_steps, progress, registry) for index in range(len(plan.mission))]
     return _outcome(plan, stage, battery_of(plan), worn, {r.result.name: r for r in runs})
 
 
 def _refuse_twin_missions(plan: Plan) -> None:
-    names = [mission.name or Path(mission.profile).stem for mission in plan.mission]
+    names = [mission.label for mission in plan.mission]
     for index, name in enumerate(names):
         if name in names[:index]:
             what = f"two missions are named {name!r}; give one of them a name of its own, such as name = 'winter'"
             raise plan.fault(f"mission.{index}.name", what)
 
 
-def _run_mission(plan: Plan, index: int, stage: Stage, merged_steps: int, progress: Progress | None) -> MissionRun:
+def _run_mission(
+    plan: Plan,
+    index: int,
+    stage: Stage,
+    merged_steps: int,
+    progress: Progress | None,
+    registry: Registry | None,
+) -> MissionRun:
     table = plan.mission[index]
     battery = battery_of(plan, table)
-    profile = profile_of(plan, table)
+    profile = profile_of(plan, table, registry)
     profile = profile if merged_steps == 1 else coarsened(profile, merged_steps)
     demand = demand_of(plan, index, profile, stage)
     refuse_impossible_power(battery, demand, profile.name)

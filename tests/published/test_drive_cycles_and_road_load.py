@@ -194,3 +194,54 @@ def test_what_regeneration_leaves_to_the_brakes_is_counted():
     braking = -np.sum(np.minimum(wheel.power, 0.0))
     assert demanded.power.min() == -5e3
     assert demanded.friction_j == pytest.approx(braking - 2 * 5e3 / 0.9)
+
+
+def test_rl_17_forces_on_a_slope():  # found: public copy of a lecture assignment; 5e-4 for g = 9.81
+    slope = np.tan(np.radians(8.0))
+    car = Vehicle(1500.0, 1.0, drag_area_m2=0.3 * 2.5, rolling_coefficient=0.015, air_density_kg_m3=1.2)
+    for speed, air in ((30.0 / 3.6, 31.25), (80.0 / 3.6, 222.22)):
+        at = np.array([speed])
+        assert car.resistance_force(at, slope)[0] == pytest.approx(air + 218.57, rel=5e-4)
+    assert car.grade_force(np.array([slope]))[0] == pytest.approx(2047.93, rel=5e-4)
+
+
+def test_trap_a_grade_is_rise_over_run_not_degrees():
+    # 100 % is 45 degrees.
+    assert REFERENCE_CAR.grade_force(np.array([1.0]))[0] == pytest.approx(1500 * 9.81 * np.sin(np.pi / 4))
+
+
+def test_up_and_down_a_hill_the_lift_comes_back():
+    speed, seconds = np.full(201, 15.0), np.ones(200)
+    grade = 0.06 * np.sin(np.linspace(0.0, 2.0 * np.pi, 200))
+    hill = at_wheels(Vehicle(1500.0, 1.0, 0.7, 0.0), speed, seconds, grade)
+    level = at_wheels(Vehicle(1500.0, 1.0, 0.7, 0.0), speed, seconds)
+    height = np.cumsum(15.0 * grade / np.sqrt(1.0 + grade**2))
+    lifted = np.cumsum(hill.power - level.power)
+    assert lifted == pytest.approx(1500 * 9.81 * height, abs=1e-6 * np.abs(lifted).max())
+    assert lifted[-1] == pytest.approx(0.0, abs=1e-6 * np.abs(lifted).max())
+
+
+def test_rl_09_a_level_grade_changes_nothing(wltc):
+    car, seconds = fitted(210.0, 0.0501, 1500.0), np.ones(len(wltc) - 1)
+    level = at_wheels(car, wltc / 3.6, seconds, np.zeros(len(seconds)))
+    assert np.array_equal(level.power, at_wheels(car, wltc / 3.6, seconds).power)
+
+
+def test_rl_19_regeneration_fades_out_at_low_speed():  # common practice, no source: the form is ours and is stated
+    car = Vehicle(1500.0, 1.0, 0.7, 0.012, regeneration_share=0.8, regeneration_fade_m_s=(2.0, 6.0))
+    assert car.regenerated_share(np.array([0.0, 2.0, 3.0, 4.0, 6.0, 30.0])) == pytest.approx([0, 0, 0.2, 0.4, 0.8, 0.8])
+
+
+def test_what_fades_goes_to_the_brakes_and_no_energy_is_lost_in_the_account(wltc):
+    seconds = np.ones(len(wltc) - 1)
+    keys = {"f0_n": 210.0, "f1_n_per_m_s": 0.0, "f2_n_per_m_s2": 0.0501 * 12.96, "drivetrain_efficiency": 0.9}
+    car = Vehicle(1500.0, 1.03, **keys, regeneration_fade_m_s=(5 / 3.6, 15 / 3.6), auxiliary_power_w=400.0)
+    wheel = at_wheels(car, wltc / 3.6, seconds)
+    demanded = stage_power(car, wheel, seconds)
+    pull, brake = np.sum(np.maximum(wheel.power, 0.0)), -np.sum(np.minimum(wheel.power, 0.0))
+    assert 0.0 < demanded.friction_j < 0.1 * brake
+    recovered = 0.9 * (brake - demanded.friction_j)
+    assert demanded.power.sum() == pytest.approx(pull / 0.9 - recovered + 400.0 * 1800, rel=1e-12)
+    slow = (wheel.speed <= 5 / 3.6) & (wheel.power < 0.0)
+    assert slow.any()
+    assert np.all(demanded.power[slow] == 400.0)

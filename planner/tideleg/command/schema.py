@@ -26,5 +26,6 @@ def execute(given: argparse.Namespace) -> int:
     if given.part is not None:
         print(json.dumps(part_schema(given.part, losses, coolings), indent=2))
     else:
-        print(json.dumps(plan_schema(registry.topologies(), losses, coolings, registry.life_models()), indent=2))
+        others = (registry.life_models(), registry.profile_sources())
+        print(json.dumps(plan_schema(registry.topologies(), losses, coolings, *others), indent=2))
     return 0

@@ -14,6 +14,7 @@ from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
 from tideleg.conformance.life import life_checks
 from tideleg.conformance.losses import loss_checks
+from tideleg.conformance.profiles import profile_checks
 from tideleg.conformance.topologies import topology_checks
 
-__all__ = ["Check", "cooling_checks", "life_checks", "loss_checks", "topology_checks"]
+__all__ = ["Check", "cooling_checks", "life_checks", "loss_checks", "profile_checks", "topology_checks"]

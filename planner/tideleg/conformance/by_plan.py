@@ -12,8 +12,9 @@ from tideleg.conformance.checks import Check
 from tideleg.conformance.cooling import cooling_checks
 from tideleg.conformance.life import life_checks
 from tideleg.conformance.losses import loss_checks
+from tideleg.conformance.profiles import profile_checks
 from tideleg.conformance.topologies import topology_checks
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology
 from tideleg.errors import InputError
 from tideleg.plan import Plan, load_plan, plan_from_mapping
 from tideleg.plan.generic import GENERIC
@@ -60,8 +61,10 @@ def _checks(plugin: Plugin, plan: Plan) -> Iterator[Check]:
         yield from _loss(offer, plan)
     elif plugin.kind == "life":
         yield from _life(offer, plan)
-    else:
+    elif plugin.kind == "cooling":
         yield from _cooling(offer, plan)
+    else:
+        yield from _profile(offer, plan)
 
 
 def _topology(topology: Topology, plan: Plan) -> Iterator[Check]:
@@ -142,6 +145,12 @@ def _cooling(model: CoolingModel, plan: Plan) -> Iterator[Check]:
         for table in TABLES[kind]:
             parts[kind] = parts.get(kind) or _own(plan.stage.keys_of(table), keys)
     yield from cooling_checks(model, own, parts)
+
+
+def _profile(source: ProfileSource, plan: Plan) -> Iterator[Check]:
+    """Take the keys of the first mission that names the source, or the source's own example."""
+    named = [mission.source_settings for mission in plan.mission if mission.source == source.name]
+    yield from profile_checks(source, (named[0], plan.folder) if named else None)
 
 
 def _own(given: Mapping[str, Any], model: type[BaseModel]) -> dict[str, object]:

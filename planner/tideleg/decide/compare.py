@@ -94,10 +94,10 @@ def _refuse_other_missions(plans: Sequence[Plan]) -> None:
 
 
 def _mission_key(plan: Plan) -> object:
-    from tideleg.facts import file_sha256
+    from tideleg.demand import profile_of
 
     missions = [
-        (file_sha256(plan.folder / m.profile), m.passes_per_year, m.terminals, m.coolant, m.ambient, m.start, m.sign)
+        (profile_of(plan, m).sha256, m.passes_per_year, m.terminals, m.coolant, m.ambient, m.start, m.sign)
         for m in plan.mission
     ]
     return missions, plan.battery, plan.link.voltage, plan.vehicle

@@ -3,7 +3,7 @@
 from tideleg.mission.coarsen import coarsened
 from tideleg.mission.layout import ROLES, Layout
 from tideleg.mission.passport import Passport, passport
-from tideleg.mission.profile import Profile
+from tideleg.mission.profile import Profile, SourcedProfile
 from tideleg.mission.reading import read_profile
 from tideleg.mission.road_load import Demanded, Vehicle, Wheel, at_wheels, stage_power
 
@@ -13,6 +13,7 @@ __all__ = [
     "Layout",
     "Passport",
     "Profile",
+    "SourcedProfile",
     "Vehicle",
     "Wheel",
     "at_wheels",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Literal
@@ -21,7 +22,7 @@ class Profile:
         or None
     speed_m_s : mean speed of each step where a speed profile was read [m/s]
     braked_by_friction_j : braking energy at the wheels that regeneration did not take [J]
-    rules : sentences that say how the file was read; every output prints them
+    rules : sentences that say how the file was read, or what a profile source did; every output prints them
     """
 
     name: str
@@ -40,3 +41,13 @@ class Profile:
     speed_m_s: FloatArray | None = field(default=None, repr=False)
     braked_by_friction_j: float = 0.0
     rules: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True)
+class SourcedProfile(Profile):
+    """A profile that a source made: it has no file, and its sha256 is that of the table made.
+
+    files_sha256 : file name -> SHA-256 of what the source read
+    """
+
+    files_sha256: Mapping[str, str] = field(default_factory=dict)

@@ -57,7 +57,7 @@ def _plan(data: dict[str, Any], source: Source) -> Plan:
     except ValidationError as error:
         raise _faults(error, source) from None
     for i, mission in enumerate(plan.mission):
-        if not (source.folder / mission.profile).is_file():
+        if mission.profile is not None and not (source.folder / mission.profile).is_file():
             raise source.fault(f"mission.{i}.profile", f"found {mission.profile!r}, which is no file; check the name")
     plan._file, plan._folder, plan._text, plan._extra_files = source.file, source.folder, source.text, tuple(files)
     return plan

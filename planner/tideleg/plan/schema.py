@@ -7,7 +7,7 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology, read_as
 from tideleg.plan.parts import GRADES
 from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase
 from tideleg.stress import LifeModel
@@ -34,6 +34,7 @@ def plan_schema(
     loss_models: Sequence[LossModel],
     cooling_models: Sequence[CoolingModel],
     life_models: Sequence[LifeModel] = (),
+    profile_sources: Sequence[ProfileSource] = (),
 ) -> dict[str, Any]:
     """Return the JSON Schema (draft 2020-12) of a plan, with the keys of every plugin in its place."""
     schema = Plan.model_json_schema()
@@ -45,6 +46,7 @@ def plan_schema(
     definitions["CoolingTable"] = _cooling(cooling_models)
     definitions["LifeTable"] = _life(definitions["LifeTable"], life_models)
     definitions.pop("WornTable", None)
+    _sources(definitions["MissionTable"], profile_sources)
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
 
 
@@ -128,6 +130,32 @@ def _life(own: dict[str, Any], life_models: Sequence[LifeModel]) -> dict[str, An
     one: dict[str, Any] = {"anyOf": tables} if tables else {"type": "object"}
     several = {"anyOf": [one, {"type": "array", "items": one, "minItems": 1}]}
     return {"type": "object", "properties": properties, "additionalProperties": several}
+
+
+def _sources(mission: dict[str, Any], sources: Sequence[ProfileSource]) -> None:
+    """Put into [[mission]] which sources there are, and the keys of each beside its name."""
+    mission["oneOf"] = [{"required": ["profile"]}, {"required": ["source"]}]
+    if not sources:
+        return
+    mission["properties"]["source"] = {"enum": [source.name for source in sources]}
+    mission["properties"]["source_settings"] = {"type": "object"}
+    mission["allOf"] = [
+        {
+            "if": {"properties": {"source": {"const": one.name}}, "required": ["source"]},
+            "then": {"properties": {"source_settings": _settings(one.settings)}},
+        }
+        for one in sources
+    ]
+
+
+def _settings(model: type[BaseModel]) -> dict[str, Any]:
+    required = model.model_json_schema().get("required", [])
+    return {
+        "type": "object",
+        "properties": _properties(model),
+        "required": required,
+        "additionalProperties": False,
+    }
 
 
 def _properties(model: type[BaseModel]) -> dict[str, Any]:

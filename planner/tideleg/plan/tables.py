@@ -202,7 +202,10 @@ class LifeTable(Table):
 
 
 class VehicleTable(Table):
-    """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2."""
+    """[vehicle]: turns a speed profile into power; either drag_area and rolling_resistance, or f0, f1, f2.
+
+    regeneration_fade : speeds at or below which nothing is taken back, and at or above which the whole share is
+    """
 
     mass: Annotated[q.Mass, Positive]
     rotating_mass_factor: float = Field(default=1.03, ge=1.0)
@@ -215,7 +218,18 @@ class VehicleTable(Table):
     drivetrain_efficiency: Annotated[q.Share, Field(gt=0.0, le=1.0)] = 1.0
     regeneration_limit: Annotated[q.Power, NotNegative] | None = None
     regeneration_share: Annotated[q.Share, Field(ge=0.0, le=1.0)] = 1.0
+    regeneration_fade: tuple[Annotated[q.Speed, NotNegative], Annotated[q.Speed, NotNegative]] | None = None
     auxiliary_power: Annotated[q.Power, NotNegative] = 0.0
+
+    @model_validator(mode="after")
+    def _fades_upward(self) -> Self:
+        fade = self.regeneration_fade
+        if fade is not None and fade[0] >= fade[1]:
+            raise ValueError(
+                f"regeneration_fade: found [{fade[0]:g}, {fade[1]:g}] m/s; give the speed without regeneration first,"
+                " then the higher one from which on it is whole, such as ['5 km/h', '15 km/h']"
+            )
+        return self
 
     @model_validator(mode="after")
     def _one_form(self) -> Self:
@@ -354,9 +368,11 @@ class LayoutTable(Table):
 
 
 class MissionTable(Table):
-    """One [[mission]]."""
+    """One [[mission]]: its profile is a file, or comes from a profile source with the keys of source_settings."""
 
-    profile: str
+    profile: str | None = None
+    source: str | None = None
+    source_settings: dict[str, Any] = {}
     layout: LayoutTable = LayoutTable()
     name: str | None = None
     passes_per_year: float = Field(default=1.0, gt=0.0)
@@ -369,6 +385,23 @@ class MissionTable(Table):
     humidity: Annotated[q.Share, Field(gt=0.0, le=1.0)] | None = None
     start: Literal["soaked", "periodic"] | q.Temperature = "soaked"
     start_soc: Annotated[q.Share, Field(ge=0.0, le=1.0)] | None = None
+
+    @model_validator(mode="after")
+    def _one_origin(self) -> Self:
+        if (self.profile is None) == (self.source is None):
+            found = "neither" if self.profile is None else "both"
+            raise ValueError(f"found {found} of profile and source; give exactly one: a file, or a profile source")
+        if self.source is None and self.source_settings:
+            raise ValueError("source_settings stands without source; name the source, or remove its settings")
+        idle = sorted({"interpolation", "sign"} & self.model_fields_set)
+        if self.source is not None and idle:
+            raise ValueError(f"{idle[0]} tells how a profile file is read; a source states its own: remove it")
+        return self
+
+    @property
+    def label(self) -> str:
+        """The name in every output: as given, or the stem of the file, or the name of the source."""
+        return self.name or (Path(self.profile).stem if self.profile is not None else str(self.source))
 
 
 class YearTable(Table):

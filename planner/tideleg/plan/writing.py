@@ -18,6 +18,7 @@ from tideleg.plan.curves import COLUMNS
 from tideleg.plan.generic import GENERIC
 from tideleg.plan.tables import Plan
 from tideleg.quantity import DIMENSIONS, parse
+from tideleg.registry import installed
 
 _STEPS = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "u"), (1e-9, "n"), (1e-12, "p"))
 
@@ -56,7 +57,8 @@ def write_plan(plan: Plan, changes: Mapping[str, object], destination: Path, hea
     if plan.file is None:
         raise ValueError("a plan made in Python has no file to copy; save it as TOML first")
     document = tomlkit.parse(plan.text)
-    _move_files(document, plan.folder, destination.parent)
+    sources = {source.name: source.file_keys for source in installed().profile_sources()}
+    _move_files(document, plan.folder, destination.parent, sources)
     for key, value in changes.items():
         _set(document, key.split("."), value)
     lines = "".join(f"# {line}\n" for line in heading.splitlines())
@@ -78,14 +80,18 @@ def _set(document: Any, path: list[str], value: object) -> None:
     place[path[-1]] = value
 
 
-def _move_files(document: Any, before: Path, after: Path) -> None:
+def _move_files(document: Any, before: Path, after: Path, file_keys: Mapping[str, tuple[str, ...]]) -> None:
     """Rewrite the relative file names of a plan for another folder."""
 
     def moved(name: str) -> str:
         return name if Path(name).is_absolute() else Path(os.path.relpath(before / name, after)).as_posix()
 
     for mission in document.get("mission", []):
-        mission["profile"] = moved(str(mission["profile"]))
+        if "profile" in mission:
+            mission["profile"] = moved(str(mission["profile"]))
+        settings = mission.get("source_settings", {})
+        for key in (key for key in file_keys.get(str(mission.get("source")), ()) if key in settings):
+            settings[key] = moved(str(settings[key]))
     for key in COLUMNS:
         given = document.get("battery", {}).get(key)
         if isinstance(given, str) and given.lower().endswith(".csv"):
