@@ -26,13 +26,11 @@ from tideleg.contract import (
     Line,
     LossModel,
     LossTerm,
-    MadeProfile,
     Need,
     Operation,
     PartKind,
     Point,
     Position,
-    ProfileSource,
     Rest,
     Slot,
     Starter,
@@ -44,6 +42,7 @@ from tideleg.contract import (
 from tideleg.errors import InputError, NoEquilibriumError, PlanError, PluginError, ProfileError, TidelegError
 from tideleg.network import Mass, Network, Path, Seat
 from tideleg.points import PointReader, PointsFile, PointTable
+from tideleg.source import MadeProfile, ProfileSource
 from tideleg.stress import Consumption, Cycles, LifeModel, LifeTerm, Stress, WornKind
 from tideleg.waveform import FloatArray, Segment, Values, Waveform
 

@@ -15,8 +15,9 @@ from typing import Any, NamedTuple, TypeVar
 
 import pluggy
 
-from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, ProfileSource, Topology
+from tideleg.contract import PROJECT, CoolingModel, Hooks, LossModel, Topology
 from tideleg.errors import PluginError
+from tideleg.source import ProfileSource
 from tideleg.stress import LifeModel
 
 KINDS: dict[str, type] = {

@@ -8,11 +8,11 @@ from collections.abc import Mapping
 import numpy as np
 from pydantic import BaseModel
 
-from tideleg.contract import MadeProfile, ProfileSource
 from tideleg.errors import PluginError
 from tideleg.mission import SourcedProfile
 from tideleg.plan import Plan, read_table
 from tideleg.registry import Registry, call_plugin, installed
+from tideleg.source import MadeProfile, ProfileSource
 
 STEP_TOLERANCE = 1e-9
 """A step may end this share of the whole length before or after the next begins."""

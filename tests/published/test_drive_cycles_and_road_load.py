@@ -196,7 +196,7 @@ def test_what_regeneration_leaves_to_the_brakes_is_counted():
     assert demanded.friction_j == pytest.approx(braking - 2 * 5e3 / 0.9)
 
 
-def test_rl_17_forces_on_a_slope():  # found: public copy of a lecture assignment; 5e-4 for g = 9.81
+def test_rl_17_forces_on_a_slope():  # found: public copy of a course assignment; 5e-4 for g = 9.81
     slope = np.tan(np.radians(8.0))
     car = Vehicle(1500.0, 1.0, drag_area_m2=0.3 * 2.5, rolling_coefficient=0.015, air_density_kg_m3=1.2)
     for speed, air in ((30.0 / 3.6, 31.25), (80.0 / 3.6, 222.22)):

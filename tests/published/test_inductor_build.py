@@ -22,7 +22,7 @@ def ferrite(saturation=1e6, permeability=2000.0, area=200e-6, path=0.1):
     return CoreShape("test", area, path, area * path, 3e-4, 0.02, 0.08, 4800.0, 0.3, law, (6.0, 1.3, 2.5), True)
 
 
-def test_in_02_gapped_circuit():  # found inputs: lecture slides on gapped magnetic circuits; answers computed
+def test_in_02_gapped_circuit():  # found inputs: course slides on gapped magnetic circuits; answers computed
     turns, flux, area, path, gap = 1000, 4e-4, 1e-4, 0.2, 3e-3
     induct = gapped_inductance(turns, area, gap / 1.5, path, 1000)  # fringing as a gap area of 1.5 cm²
     assert turns**2 / induct == pytest.approx(1.750704e7, rel=1e-6)

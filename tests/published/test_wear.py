@@ -73,7 +73,7 @@ LEE = [2, -1, 3, -5, 1, -3, 4, -4, 2]
 
 
 # found: RF-02, RF-03 Lee, Barkey, Kang, Metal Fatigue Analysis Handbook; RF-04 Haibach, Betriebsfestigkeit, Fig. 3.3-30;
-# RF-05, RF-09 lecture and two-amplitude cases, all as in the pyLife test suite; RF-07 rfcnt test suite.
+# RF-05, RF-09 course and two-amplitude cases, all as in the pyLife test suite; RF-07 rfcnt test suite.
 @pytest.mark.parametrize(
     ("row", "history", "closed", "residue"),
     [

@@ -4,8 +4,13 @@ from __future__ import annotations
 
 import argparse
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 HELP = "tell what is in a profile"
+
+
+if TYPE_CHECKING:
+    from tideleg.mission import Passport, Profile
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -26,6 +31,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--stamps",
         choices=("seconds", "minutes", "hours", "clock", "iso", "day first", "month first"),
         help="their kind",
+    )
+    parser.add_argument(
+        "--pictures", type=Path, metavar="DIR", help="write trace, duration curve, rms and energy as PNG"
     )
     parser.add_argument("--json", action="store_true", help="print JSON for machines")
 
@@ -52,8 +60,23 @@ def execute(given: argparse.Namespace) -> int:
         layout=Layout(columns=named, unit=given.unit, encoding=given.encoding, stamps=given.stamps),
     )
     found = passport(profile)
+    if given.pictures is not None:
+        _write_pictures(profile, found, given.pictures)
     if given.json:
         print(json.dumps(found.to_dict() | {"rules": list(profile.rules), "sha256": profile.sha256}, indent=2))
     else:
         print_passport(profile, found, Console())
     return 0
+
+
+def _write_pictures(profile: Profile, found: Passport, folder: Path) -> None:
+    """Write every picture of the profile as PNG."""
+    from tideleg.errors import InputError
+    from tideleg.report.profile_pictures import draw_profile
+
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+        for name, picture in draw_profile(profile, found).items():
+            picture.figure.savefig(folder / f"{name}.png", dpi=150, metadata={"Software": None})
+    except OSError as error:
+        raise InputError(f"{folder}: the pictures cannot be written ({error.strerror})") from None

@@ -14,13 +14,14 @@ from tideleg.conformance.life import life_checks
 from tideleg.conformance.losses import loss_checks
 from tideleg.conformance.profiles import profile_checks
 from tideleg.conformance.topologies import topology_checks
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology
 from tideleg.errors import InputError
 from tideleg.plan import Plan, load_plan, plan_from_mapping
 from tideleg.plan.generic import GENERIC
 from tideleg.quantity import parse
 from tideleg.registry import Plugin, Registry
 from tideleg.scenario import scenarios_folder
+from tideleg.source import ProfileSource
 from tideleg.stress import LifeModel
 
 GREATEST_CURRENT = 300.0

@@ -11,7 +11,7 @@ import numpy as np
 from pydantic import ValidationError
 
 from tideleg.conformance.checks import Check
-from tideleg.contract import MadeProfile, ProfileSource
+from tideleg.source import MadeProfile, ProfileSource
 from tideleg.sourced import fault_of
 
 Given = tuple[Mapping[str, object], Path]

@@ -43,6 +43,10 @@ def coarsened(profile: Profile, factor: int) -> Profile:
     merged: dict[str, Any] = {
         name: mean(getattr(profile, name)) for name in _HELD if getattr(profile, name) is not None
     }
+    if profile.power_peak_w is not None:
+        merged["power_peak_w"] = np.maximum.reduceat(profile.power_peak_w, starts)
+    if profile.power_valley_w is not None:
+        merged["power_valley_w"] = np.minimum.reduceat(profile.power_valley_w, starts)
     rule = f"every {factor} neighbouring steps are merged into their mean, to test the profile's resolution"
     return dataclasses.replace(
         profile, time_s=profile.time_s[starts], duration_s=duration, rules=(*profile.rules, rule), **merged

@@ -53,6 +53,8 @@ NAMES: Mapping[str, tuple[str, ...]] = {
     "coolant": ("coolant",),
     "ambient": ("ambient",),
     "battery_temperature": ("battery",),
+    "power_peak": ("power peak",),
+    "power_valley": ("power valley",),
     "power_max": ("power max",),
     "power_min": ("power min",),
 }

@@ -22,6 +22,7 @@ class Passport:
 
     rms_by_window_w : window [s] -> greatest rms over any window of that length; None where the profile is shorter
     longest_run_s : longest time without a break above `run_above_w` (half the peak, by magnitude)
+    inside_discharge_w, inside_charge_w : greatest power inside any step, where the file tells it, else None
     steepest_w_per_s : greatest change between neighbouring rows over the time between them
     """
 
@@ -45,6 +46,8 @@ class Passport:
     steepest_s: float
     run_above_w: float
     longest_run_s: float
+    inside_discharge_w: float | None = None
+    inside_charge_w: float | None = None
 
     def _step_sizes(self) -> tuple[float, float, float]:
         return self.step_least_s, self.step_median_s, self.step_greatest_s
@@ -71,12 +74,24 @@ class Passport:
             ("net, positive = discharge", f"{self.net_j / kwh:.5g} kWh"),
             ("peak discharge", f"{self.peak_discharge_w / 1e3:.5g} kW at {self.peak_discharge_s:g} s"),
             ("peak charge", f"{self.peak_charge_w / 1e3:.5g} kW at {self.peak_charge_s:g} s"),
+            *self._inside_rows(),
             ("mean", f"{self.mean_w / 1e3:.4g} kW"),
             ("rms", f"{self.rms_w / 1e3:.4g} kW"),
             *windows,
             ("longest run above half the peak", f"{self.longest_run_s:g} s above {self.run_above_w / 1e3:.4g} kW"),
             ("steepest change", f"{self.steepest_w_per_s / 1e3:.4g} kW/s at {self.steepest_s:g} s"),
             ("share of time at zero power", f"{100 * self.idle_share:.3g} %"),
+        ]
+
+    def _inside_rows(self) -> list[tuple[str, str]]:
+        pairs = (
+            ("discharge", self.peak_discharge_w, self.inside_discharge_w),
+            ("charge", self.peak_charge_w, self.inside_charge_w),
+        )
+        return [
+            (f"peak {way} inside a step", f"between {mean / 1e3:.5g} kW (means) and {peak / 1e3:.5g} kW (file)")
+            for way, mean, peak in pairs
+            if peak is not None
         ]
 
 
@@ -109,6 +124,8 @@ def passport(profile: Profile) -> Passport:
         steepest_s=float(time[steep + 1]) if len(power) > 1 else 0.0,
         run_above_w=half,
         longest_run_s=_longest_run(np.abs(power) > half, duration),
+        inside_discharge_w=None if profile.power_peak_w is None else max(float(profile.power_peak_w.max()), 0.0),
+        inside_charge_w=None if profile.power_valley_w is None else max(-float(profile.power_valley_w.min()), 0.0),
     )
 
 

@@ -20,6 +20,7 @@ class Profile:
     power_w : positive = discharge [W]
     link_voltage_v, coolant_degc, ambient_degc, battery_degc, power_max_w, power_min_w : columns that override the plan,
         or None
+    power_peak_w, power_valley_w : greatest and least power inside each step, whose mean is power_w, or None [W]
     speed_m_s : mean speed of each step where a speed profile was read [m/s]
     braked_by_friction_j : braking energy at the wheels that regeneration did not take [J]
     rules : sentences that say how the file was read, or what a profile source did; every output prints them
@@ -38,6 +39,8 @@ class Profile:
     battery_degc: FloatArray | None = field(default=None, repr=False)
     power_max_w: FloatArray | None = field(default=None, repr=False)
     power_min_w: FloatArray | None = field(default=None, repr=False)
+    power_peak_w: FloatArray | None = field(default=None, repr=False)
+    power_valley_w: FloatArray | None = field(default=None, repr=False)
     speed_m_s: FloatArray | None = field(default=None, repr=False)
     braked_by_friction_j: float = 0.0
     rules: tuple[str, ...] = ()

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tideleg.errors import ProfileError
-from tideleg.mission.layout import Column, Found, Layout
+from tideleg.mission.layout import UNITS, Column, Found, Layout
 from tideleg.mission.profile import Profile
 from tideleg.mission.road_load import Vehicle, at_wheels, stage_power
 from tideleg.mission.rows import CHUNK_ROWS, Rows, in_si, read_rows
@@ -90,6 +90,7 @@ def read_profile(
         power = 0.5 * (watts[1:] + watts[:-1]) if linear else steps.held(watts)
         rules.append(f"{kind} is power at the {terminals} terminals; positive in the file is {positive}")
     _refuse_bad_overrides(path, rows, overrides)
+    peak, valley = _inside(path, rows, steps, positive)
     profile = Profile(
         name or path.stem,
         path,
@@ -98,6 +99,8 @@ def read_profile(
         time_s=time[: len(steps.duration)] - time[0],
         duration_s=steps.duration,
         power_w=power,
+        power_peak_w=peak,
+        power_valley_w=valley,
         speed_m_s=speed,
         braked_by_friction_j=friction,
         rules=tuple(rules),
@@ -106,6 +109,39 @@ def read_profile(
     if layout.gap == "zero" and len(steps.holes):
         return _with_zeros(path, profile, steps.holes, layout, interpolation)
     return profile
+
+
+def _inside(path: Path, rows: Rows, steps: _Steps, positive: str) -> tuple[FloatArray | None, FloatArray | None]:
+    """Return the greatest and the least power inside each step where the file tells them [W]; None where it does not.
+
+    Raises
+    ------
+    ProfileError
+        If the mean power of a row does not lie between them, or they stand beside a speed.
+    """
+    found = [role for role in ("power_peak", "power_valley") if role in rows.columns]
+    if not found:
+        return None, None
+    if rows.found.value != "power":
+        what = "power inside a step stands beside a speed; give it with a power"
+        raise ProfileError(what, file=path, column=rows.found.columns[found[0]].name)
+    size = UNITS[str(rows.found.columns["power"].unit)][1]
+    mean = rows.columns["power"]
+    for role, sign in (("power_peak", 1.0), ("power_valley", -1.0)):
+        beyond = sign * (mean - rows.columns[role]) > 0.0 if role in rows.columns else np.zeros(1, dtype=bool)
+        if np.any(beyond):
+            row = int(np.argmax(beyond))
+            what = "the mean power of the row does not lie between the least and the greatest inside it"
+            raise ProfileError(what, file=path, line=int(rows.line[row]), column=rows.found.columns[role].name)
+    peak, valley = (steps.held(rows.columns[role] * size) if role in rows.columns else None for role in ROLES_INSIDE)
+    if positive == "discharge":
+        return peak, valley
+    return (None if valley is None else -valley), (None if peak is None else -peak)
+
+
+ROLES_INSIDE = ("power_peak", "power_valley")
+INSIDE_OR_MEAN = ("power_w", "power_peak_w", "power_valley_w")
+"""Powers that are none in a hole that is declared to hold no power."""
 
 
 class _Steps:
@@ -168,10 +204,10 @@ def _with_zeros(path: Path, profile: Profile, holes: NDArray[np.int64], layout: 
     rest = duration[holes] - longest
     duration[holes] = longest
     changes: dict[str, Any] = {}
-    for key in ("power_w", *OVERRIDES.values()):
+    for key in (*INSIDE_OR_MEAN, *OVERRIDES.values()):
         values = getattr(profile, key)
         if values is not None:
-            changes[key] = np.insert(values, after, 0.0 if key == "power_w" else values[holes])
+            changes[key] = np.insert(values, after, 0.0 if key in INSIDE_OR_MEAN else values[holes])
     duration = np.insert(duration, after, rest)
     time = np.concatenate([[0.0], np.cumsum(duration)[:-1]])
     return dataclasses.replace(profile, duration_s=duration, time_s=time, **changes)

@@ -7,9 +7,10 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from tideleg.contract import CoolingModel, LossModel, Need, PartKind, ProfileSource, Starter, Topology, read_as
+from tideleg.contract import CoolingModel, LossModel, Need, PartKind, Starter, Topology, read_as
 from tideleg.plan.parts import GRADES
 from tideleg.plan.tables import CapacitorBase, DiodeBase, InductorBase, Plan, SwitchBase, TransformerBase
+from tideleg.source import ProfileSource
 from tideleg.stress import LifeModel
 
 _BASES: dict[PartKind, list[type[BaseModel]]] = {

@@ -336,8 +336,9 @@ class CapacitorBase(Table):
 class LayoutTable(Table):
     """layout of a [[mission]]: what is declared of its file; the rest is told from the file, or asked for.
 
-    time, duration, power, speed, link_voltage, coolant, ambient, battery_temperature, power_max, power_min : names of
-        columns in the file; once one is named, columns that are not known are left unread
+    time, duration, power, speed, link_voltage, coolant, ambient, battery_temperature, power_peak, power_valley,
+        power_max, power_min : names of columns in the file, peak and valley inside a step in the unit of power; once
+        one is named, columns that are not known are left unread
     """
 
     time: str | None = None
@@ -348,6 +349,8 @@ class LayoutTable(Table):
     coolant: str | None = None
     ambient: str | None = None
     battery_temperature: str | None = None
+    power_peak: str | None = None
+    power_valley: str | None = None
     power_max: str | None = None
     power_min: str | None = None
     unit: Literal["W", "kW", "MW", "m/s", "km/h", "mph"] | None = None

@@ -273,6 +273,10 @@ def _guess(entry: GradeEntry) -> str:
     return f"{entry.key}: {100.0 * entry.loss_share:.2g} % of the loss rests on it ({told})"
 
 
+LEAST_MERGED = 2
+"""Where an error grows with the step, doubling the step moves the answer by about the error that is already there."""
+
+
 def _resolution(one: Coarser) -> str:
     """Return one resolution test in words; a profile that still moves the answer is too coarse to be the last word."""
     moves = [f"the mean square battery current moves by {100.0 * one.mean_square_change:+.2f} %"]
@@ -285,7 +289,10 @@ def _resolution(one: Coarser) -> str:
         strong = strong or abs(one.damage_change) > RESOLVED_DAMAGE
     verdict = "the profile's own steps limit this answer" if strong else "the profile resolves this answer"
     told = f"{', '.join(moves[:-1])} and {moves[-1]}" if len(moves) > 1 else moves[0]
-    return f"with every {one.merged} steps merged {told}: {verdict}"
+    trend = ""
+    if strong and one.merged == LEAST_MERGED:
+        trend = "; if the trend goes on below them, they hide about as much again, the other way round"
+    return f"with every {one.merged} steps merged {told}: {verdict}{trend}"
 
 
 def all_rules(outcome: Outcome) -> list[str]:

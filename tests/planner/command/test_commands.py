@@ -187,3 +187,5 @@ def test_a_logs_columns_can_be_named_on_the_command_line(capsys, tmp_path):
     assert main(asked) == 0
     told = json.loads(capsys.readouterr().out)
     assert any("clock times" in rule for rule in told["rules"])
+    assert main([*asked, "--pictures", str(tmp_path / "seen")]) == 0
+    assert len([p for p in (tmp_path / "seen").iterdir() if p.stat().st_size > 1000]) == 4

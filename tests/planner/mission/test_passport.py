@@ -5,7 +5,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from tideleg.mission import Profile, passport
+from tideleg.errors import ProfileError
+from tideleg.mission import Profile, coarsened, passport, read_profile
 from tideleg.mission.passport import greatest_rms
 
 
@@ -53,3 +54,17 @@ def test_one_step_and_idle():
     assert found.rms_by_window_w[60.0] == 0.0
     assert passport(profile([5.0], [0.5])).rms_by_window_w[1.0] is None
     assert found.to_dict()["rms_by_window_w"]["60"] == 0.0
+
+
+def test_power_inside_steps_brackets_the_peak(tmp_path):
+    path = tmp_path / "p.csv"
+    path.write_text("time_s,power_w,power_peak_w,power_valley_w\n0,5,9,-2\n1,-3,1,-8\n2,0,0,0\n")
+    found = passport(read_profile(path))
+    assert (found.peak_discharge_w, found.inside_discharge_w, found.inside_charge_w) == (5.0, 9.0, 8.0)
+    assert any("inside a step" in label for label, _ in found.rows())
+    turned = passport(read_profile(path, positive="charge"))
+    assert (turned.peak_discharge_w, turned.inside_discharge_w, turned.inside_charge_w) == (3.0, 8.0, 9.0)
+    assert coarsened(read_profile(path), 2).power_peak_w.tolist() == [9.0]
+    path.write_text("time_s,power_w,power_peak_w\n0,5,4\n1,0,0\n")
+    with pytest.raises(ProfileError, match="line 2, power_peak_w: the mean power"):
+        read_profile(path)
