@@ -56,6 +56,8 @@ def adapted(plan: Plan, name: str, registry: Registry) -> tuple[Plan, tuple[str,
     notes += told
     other, told = _with_tables(other, tables, _tables(other, topology, registry), name)
     notes += told
+    other, told = _with_lives(other, tables, _tables(other, topology, registry))
+    notes += told
     other, told = _with_chips(other, topology, chips, registry)
     return other, (*notes, *told)
 
@@ -121,6 +123,26 @@ def _without_refused(plan: Plan, topology: Topology, name: str) -> tuple[Plan, l
             continue
         break
     return plan, notes
+
+
+def _with_lives(plan: Plan, before: Mapping[str, Slot], after: Mapping[str, Slot]) -> tuple[Plan, list[str]]:
+    """Return the plan with the lives of parts that the new topology has; what wears beside the stage stays.
+
+    A switch table that is gone leaves its life to the switch tables that took its data.
+    """
+    if plan.life is None:
+        return plan, []
+    heirs = [table for table, slot in after.items() if slot.kind == "switch" and table not in before]
+    kept, notes = [], []
+    for worn in plan.life.parts:
+        if worn.part in after or worn.part not in before:
+            kept.append(worn)
+        elif before[worn.part].kind == "switch" and heirs:
+            kept += [worn.model_copy(update={"part": table}) for table in heirs]
+            notes.append(f"the life of {worn.part} is asked of {', '.join(heirs)}")
+        else:
+            notes.append(f"the life of {worn.part} is not asked: there is no such part")
+    return plan.model_copy(update={"life": plan.life.model_copy(update={"parts": tuple(kept)})}), notes
 
 
 def _with_chips(plan: Plan, topology: Topology, chips: int, registry: Registry) -> tuple[Plan, list[str]]:

@@ -106,11 +106,12 @@ def _electrical(
 ) -> Trial:
     """Repeat the electrical choices until none moves.
 
-    The first time round the parts are held at the coolant: a stage that has not been sized may find no equilibrium.
+    The first time round the parts are held at the coolant and their life is not asked: a stage that has not been sized
+    may find no equilibrium.
     """
     for _ in range(MOST_ROUNDS):
         before = _values(trial)
-        plan = trial.plan.model_copy(update={"cooling": None}) if uncooled else trial.plan
+        plan = trial.plan.model_copy(update={"cooling": None, "life": None}) if uncooled else trial.plan
         outcome = run(plan, registry=registry, progress=progress)
         trial = size_legs(trial, outcome, several_legs)
         if _values(trial).get("stage.legs") == before.get("stage.legs"):

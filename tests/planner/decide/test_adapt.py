@@ -83,3 +83,15 @@ def test_a_stage_that_cannot_operate_is_a_contender_with_its_reason(tmp_path):
 def test_an_unknown_topology_is_named():
     with pytest.raises(InputError, match="sidecar"):
         adapted(load_plan(COMMUTER), "sidecar", installed())
+
+
+@pytest.mark.parametrize("name", ["dual-bridge", "inverting", "four-switch"])
+def test_lives_follow_the_parts_that_the_topology_has(name):
+    kerbside = load_plan(COMMUTER.parents[1] / "kerbside" / "plan.toml")
+    other, notes = adapted(kerbside, name, installed())
+    stage = build_stage(other)
+    switches = {part.slot.table for part in stage.parts if part.slot.kind == "switch"}
+    asked = {worn.part for worn in other.life.parts}
+    assert switches <= asked
+    assert {"link_capacitor", "coolant_pump"} <= asked
+    assert any("life of switch" in note for note in notes) == (name == "dual-bridge")

@@ -150,3 +150,13 @@ def test_an_ideal_battery_does_not_age(tmp_path):
         folder=tmp_path,
     )
     assert explained(plan, run(plan)).packs == ()
+
+
+def test_a_plan_that_asks_for_a_life_is_sized_too(tmp_path):
+    shutil.copytree(Path(__file__).parents[3] / "profiles" / "kerbside", tmp_path / "k")
+    path = tmp_path / "k" / "plan.toml"
+    profile = tmp_path / "k" / "kerbside.csv"
+    profile.write_text("\n".join(profile.read_text().splitlines()[:400]) + "\n")
+    path.write_text(path.read_text().replace("passes_per_year = 2600", "passes_per_year = 2000"))
+    sized = size(path)
+    assert sized.outcome.wear.parts  # the proof tells the life, though the first rounds do not ask it
